@@ -27,3 +27,17 @@ func (a *Matrix) MulVecTo(dst, x []float64) {
 		dst[i] = sum
 	}
 }
+
+// Find is the index in Adj of entry (i, j), which must be there. O(log of the row).
+func (p *Pattern) Find(i, j int32) int64 {
+	lo, hi := p.Ptr[i], p.Ptr[i+1]
+	for lo < hi {
+		mid := (lo + hi) / 2
+		if p.Adj[mid] < j {
+			lo = mid + 1
+		} else {
+			hi = mid
+		}
+	}
+	return lo
+}

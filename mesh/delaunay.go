@@ -1,0 +1,223 @@
+package mesh
+
+import "math"
+
+// weightFloor is how far below zero, against the size of its cotangents, an edge
+// weight may lie before it counts as negative: a right angle built by splitting an
+// edge at the foot of a height rounds to either side.
+const weightFloor = 1e-10
+
+// Delaunay flips edges until the triangulation is intrinsic Delaunay (A. Bobenko and
+// B. Springborn, Discrete Comput. Geom. 38, 2007), so that every cotangent weight is
+// at least 0. Edges that may not be flipped (boundary, more than two faces, a datum)
+// and whose weight is negative are split at the foot of a height. Both leave the
+// metric as it is. At most budget edges are split; what is left is in Unmended.
+func (s *Surface) Delaunay(budget int) {
+	queue := make([]int32, 0, len(s.Vert))
+	queued := make([]bool, len(s.Vert))
+	push := func(h int32) {
+		for int(h) >= len(queued) {
+			queued = append(queued, false)
+		}
+		if !queued[h] {
+			queued[h] = true
+			queue = append(queue, h)
+		}
+	}
+	for h := int32(len(s.Vert)) - 1; h >= 0; h-- {
+		if s.Glue[h] >= h { // one halfedge of each edge with two faces; all of stranger ones do no harm
+			push(h)
+		}
+	}
+	// Each flip lowers the Dirichlet energy of every function, so flips end; rounding
+	// could still undo that on a face without area: the bound makes sure.
+	mostFlips := 200 * (len(s.Vert) + 1000)
+	s.Unmended = 0
+	for len(queue) > 0 {
+		h := queue[len(queue)-1]
+		queue = queue[:len(queue)-1]
+		queued[h] = false
+		if !s.negative(h) {
+			continue
+		}
+		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.Flips < mostFlips {
+			s.flip(h, g)
+			s.Flips++
+			for _, k := range [4]int32{h, prev(h), g, prev(g)} {
+				push(k)
+			}
+			continue
+		}
+		if s.Splits >= budget {
+			s.Unmended++
+			continue
+		}
+		obtuse, at := h, 0.0
+		for g := s.Glue[h]; g != h; g = s.Glue[g] {
+			if s.cot[g] < s.cot[obtuse] {
+				obtuse = g
+			}
+		}
+		at, _ = s.apex(obtuse)
+		first := int32(len(s.Vert))
+		s.splitEdge(obtuse, at)
+		s.Splits++
+		for g := obtuse; ; {
+			f := g / 3
+			for k := 3 * f; k < 3*f+3; k++ {
+				push(k)
+			}
+			if g = s.Glue[g]; g == obtuse {
+				break
+			}
+		}
+		for k := first; k < int32(len(s.Vert)); k++ {
+			push(k)
+		}
+	}
+	for f := range s.parent {
+		s.parent[f] = -1
+	}
+}
+
+// Weight is the cotangent weight of the edge of h: half the sum, over its faces, of
+// the cotangents of the opposite angles.
+func (s *Surface) Weight(h int32) float64 {
+	sum := s.cot[h]
+	for g := s.Glue[h]; g != h; g = s.Glue[g] {
+		sum += s.cot[g]
+	}
+	return sum / 2
+}
+
+func (s *Surface) negative(h int32) bool {
+	sum, size := s.cot[h], math.Abs(s.cot[h])
+	for g := s.Glue[h]; g != h; g = s.Glue[g] {
+		sum += s.cot[g]
+		size += math.Abs(s.cot[g])
+	}
+	return sum < -weightFloor*(1+size)
+}
+
+// apex places the corner opposite h in the frame whose origin is the tail of h and
+// whose first axis runs along h.
+func (s *Surface) apex(h int32) (x, y float64) {
+	e, a, b := s.Length[h], s.Length[next(h)], s.Length[prev(h)]
+	x = (e + (b-a)*(b+a)/e) / 2
+	return x, 2 * triangleArea(e, a, b) / e
+}
+
+// flip replaces the edge of h and g = Opposite(h), the diagonal of a quadrilateral
+// i l j k with h: i→j, by the other diagonal. Afterwards
+//
+//	h: i→l, next(h): l→k, prev(h): k→i    and    g: j→k, next(g): k→l, prev(g): l→j.
+func (s *Surface) flip(h, g int32) {
+	h1, g1 := next(h), next(g)
+	xk, yk := s.apex(h)
+	xl, yl := s.apex(g) // from j, against the direction of h
+	diagonal := math.Hypot(xk-(s.Length[h]-xl), yk+yl)
+	k, l := s.Vert[prev(h)], s.Vert[prev(g)]
+
+	// Two outer halfedges change places: g1 (i→l) goes to h, and h1 (j→k) to g.
+	moved := func(x int32) int32 {
+		switch x {
+		case g1:
+			return h
+		case h1:
+			return g
+		}
+		return x
+	}
+	beforeG1, afterG1 := s.before(g1), s.Glue[g1]
+	beforeH1, afterH1 := s.before(h1), s.Glue[h1]
+	s.Length[h], s.Length[g] = s.Length[g1], s.Length[h1]
+	s.mark[h], s.mark[g] = s.mark[g1], s.mark[h1]
+	s.Glue[moved(beforeG1)], s.Glue[h] = h, moved(afterG1)
+	s.Glue[moved(beforeH1)], s.Glue[g] = g, moved(afterH1)
+	s.Length[h1], s.Length[g1] = diagonal, diagonal
+	s.mark[h1], s.mark[g1] = 0, 0
+	s.Glue[h1], s.Glue[g1] = g1, h1
+	s.Vert[h1], s.Vert[g1] = l, k
+	s.setCotangents(h / 3)
+	s.setCotangents(g / 3)
+}
+
+// before is the halfedge whose Glue is h.
+func (s *Surface) before(h int32) int32 {
+	p := h
+	for s.Glue[p] != h {
+		p = s.Glue[p]
+	}
+	return p
+}
+
+// splitEdge puts a new vertex on the edge of h, at the given length from its tail,
+// and joins it to the opposite corner of every face around. Each face keeps the part
+// at its halfedge's tail; the other part becomes a new face.
+func (s *Surface) splitEdge(h int32, at float64) int32 {
+	e := s.Length[h]
+	at = min(max(at, 1e-3*e), 0.999*e)
+	tail, head := s.Vert[h], s.head(h)
+	m := s.addVertex()
+	t := at / e
+	for axis := range int32(3) {
+		s.Positions[3*m+axis] = (1-t)*s.Positions[3*tail+axis] + t*s.Positions[3*head+axis]
+	}
+	around := []int32{h}
+	for g := s.Glue[h]; g != h; g = s.Glue[g] {
+		around = append(around, g)
+	}
+	near := make([]int32, len(around)) // in each face, the halfedge of the part tail–m
+	far := make([]int32, len(around))  // and of the part m–head
+	for i, g := range around {
+		along := s.Vert[g] == tail
+		from := at
+		if !along {
+			from = e - at
+		}
+		x, y := s.apex(g)
+		spoke := math.Hypot(from-x, y)
+		spoke = max(spoke, math.Abs(from-s.Length[prev(g)]), math.Abs(e-from-s.Length[next(g)])) // rounding
+		g2 := s.cutFace(g, m, spoke)
+		s.Length[g], s.Length[g2] = from, e-from
+		s.mark[g2] = s.mark[g]
+		s.setCotangents(g / 3)
+		s.setCotangents(g2 / 3)
+		near[i], far[i] = g, g2
+		if !along {
+			near[i], far[i] = g2, g
+		}
+	}
+	for i := range around {
+		j := (i + 1) % len(around)
+		s.Glue[near[i]], s.Glue[far[i]] = near[j], far[j]
+	}
+	return m
+}
+
+// cutFace cuts the face of g: i→j, with apex k, into (i, m, k), which keeps the
+// place of the old face, and (m, j, k), whose halfedge m→j it returns.
+func (s *Surface) cutFace(g, m int32, spoke float64) int32 {
+	j, k := s.head(g), s.Vert[prev(g)]
+	jk := next(g)
+	f := int32(len(s.Vert))
+	s.Vert = append(s.Vert, m, j, k)
+	s.Length = append(s.Length, 0, s.Length[jk], spoke)
+	s.Glue = append(s.Glue, f, f+1, f+2)
+	s.mark = append(s.mark, 0, s.mark[jk], 0)
+	s.cot = append(s.cot, 0, 0, 0)
+	s.parent = append(s.parent, s.parent[g/3])
+	s.moveGlue(jk, f+1) // the outer halfedge j→k; its place becomes m→k
+	s.Vert[jk] = m
+	s.Length[jk] = spoke
+	s.mark[jk] = 0
+	s.Glue[jk], s.Glue[f+2] = f+2, jk
+	return f
+}
+
+func (s *Surface) addVertex() int32 {
+	s.NumVertices++
+	s.Positions = append(s.Positions, 0, 0, 0)
+	s.NoValue = append(s.NoValue, false)
+	return int32(s.NumVertices - 1)
+}

@@ -1,0 +1,386 @@
+package mesh
+
+import (
+	"fmt"
+	"math"
+)
+
+// A Surface is a triangulation known by its edge lengths: connectivity and a flat
+// metric on each triangle, which is all that heat and distance depend on. Halfedge
+// h = 3f+k runs from corner k of face f to the next corner. After flips two edges
+// may join the same pair of vertices, and an edge may be a loop (a Δ-complex).
+//
+// Vertices 0 to NumOriginal-1 are those of the mesh, under their numbers; those
+// that Place and Delaunay add follow.
+type Surface struct {
+	NumVertices int
+	NumOriginal int
+	Vert        []int32   // tail of halfedge h; length 3·faces
+	Length      []float64 // length of halfedge h, the same all around its edge
+	Glue        []int32   // the next halfedge around the edge: h itself on a boundary, a cycle otherwise
+	Positions   []float64 // x, y, z by vertex: to order unknowns and to show results, never to measure
+	NoValue     []bool    // by vertex: in no triangle of positive area, so no field has a value there
+
+	Guard     LengthGuard // what was done to degenerate triangles
+	Flips     int         // edge flips made by Delaunay
+	Splits    int         // edges split by Delaunay
+	Unmended  int         // edges left with a negative weight (only if the budget of splits ran out)
+	Duplicate int         // triangles left out: the same corners in the same order as another
+	Collapsed int         // triangles left out: a repeated corner, or no area and a corner without value
+	mesh      *Mesh       // as it was read
+	cot       []float64   // cotangent of the angle opposite halfedge h
+	mark      []int32     // 0: may be flipped; seam: orientation cannot be continued; k>0: edge of a datum, see tags
+	tags      [][]int32   // data that an edge with mark k belongs to
+	sites     []int32     // by datum, after Place: its vertex, or -1 where it is a set of edges
+	parent    []int32     // by face: the mesh triangle it came from; -1 once flips have mixed them
+}
+
+const seam = -1 // mark of an edge across which orientation does not continue
+
+// LengthGuard tells how far edges had to be lengthened so that every triangle
+// inequality holds strictly.
+type LengthGuard struct {
+	Edges    int     // number of edges lengthened
+	Largest  float64 // the largest lengthening, in the file's unit
+	Relative float64 // the same over the longest edge of its triangle
+}
+
+// slackFloor is how far, relative to its longest edge, a triangle must be from
+// flat: lengths carry a relative error of 1e-16, so the slack a+b-c then keeps four
+// digits, and distances move by 1e-12 at most.
+const slackFloor = 1e-12
+
+// flatArea is the area, relative to the square of the longest edge, up to which a
+// triangle counts as having none: rounded coordinates give no better.
+const flatArea = 1e-15
+
+// An EmptyError is a mesh without a triangle of positive area.
+type EmptyError struct{ Triangles int }
+
+func (e *EmptyError) Error() string {
+	return fmt.Sprintf("no triangle of positive area among %d; nothing can be computed on it", e.Triangles)
+}
+
+// A RangeError is a mesh whose size cannot be squared in double precision.
+type RangeError struct{ Size float64 }
+
+func (e *RangeError) Error() string {
+	return fmt.Sprintf("the part measures %g in its own unit; want 1e-140 to 1e140 (change the unit)", e.Size)
+}
+
+// NewSurface measures the edges of m and glues its triangles. Triangles with a
+// repeated corner, exact duplicates, and flat triangles that alone hold a vertex are
+// left out; faces are turned so that neighbours agree wherever the surface allows.
+// The error is an *EmptyError or a *RangeError. O(n).
+func NewSurface(m *Mesh) (*Surface, error) {
+	s := &Surface{
+		mesh:        m,
+		NumVertices: m.NumVertices(),
+		NumOriginal: m.NumVertices(),
+		Positions:   append([]float64(nil), m.Positions...),
+		NoValue:     make([]bool, m.NumVertices()),
+	}
+	if err := m.checkRange(); err != nil {
+		return nil, err
+	}
+	s.keepFaces(m)
+	if len(s.Vert) == 0 {
+		return nil, &EmptyError{Triangles: m.NumTriangles()}
+	}
+	s.orient()
+	s.Length = make([]float64, len(s.Vert))
+	for h := range s.Vert {
+		s.Length[h] = dist(s.Positions, s.Vert[h], s.head(int32(h)))
+	}
+	s.guardLengths()
+	s.cot = make([]float64, len(s.Vert))
+	for f := range len(s.Vert) / 3 {
+		s.setCotangents(int32(f))
+	}
+	return s, nil
+}
+
+func (m *Mesh) checkRange() error {
+	var lo, hi [3]float64
+	for axis := range lo {
+		lo[axis], hi[axis] = math.Inf(1), math.Inf(-1)
+	}
+	for _, v := range m.Triangles {
+		for axis := range lo {
+			x := m.Positions[3*v+int32(axis)]
+			lo[axis], hi[axis] = min(lo[axis], x), max(hi[axis], x)
+		}
+	}
+	size := 0.0
+	for axis := range lo {
+		size = max(size, hi[axis]-lo[axis], math.Abs(lo[axis]), math.Abs(hi[axis]))
+	}
+	if len(m.Triangles) > 0 && size > 0 && !(size >= 1e-140 && size <= 1e140) {
+		return &RangeError{Size: size}
+	}
+	return nil
+}
+
+// keepFaces chooses the triangles that make up the surface.
+func (s *Surface) keepFaces(m *Mesh) {
+	for v := range s.NoValue {
+		s.NoValue[v] = true
+	}
+	t := m.Triangles
+	for f := range m.NumTriangles() {
+		a, b, c := t[3*f], t[3*f+1], t[3*f+2]
+		if hasArea(m.Positions, a, b, c) {
+			s.NoValue[a], s.NoValue[b], s.NoValue[c] = false, false, false
+		}
+	}
+	next := glue(t, m.NumVertices())
+	seen := map[[3]int32]struct{}{} // only of triangles at edges with more than two faces
+	for f := range int32(m.NumTriangles()) {
+		a, b, c := t[3*f], t[3*f+1], t[3*f+2]
+		switch {
+		case a == b || b == c || c == a, s.NoValue[a] || s.NoValue[b] || s.NoValue[c]:
+			s.Collapsed++
+			continue
+		case duplicated(t, next, seen, f):
+			s.Duplicate++
+			continue
+		}
+		s.Vert = append(s.Vert, a, b, c)
+		s.parent = append(s.parent, f)
+	}
+}
+
+// duplicated tells whether an earlier triangle has the corners of f in the same
+// cyclic order. Where an edge has two faces one look suffices; elsewhere a table
+// keeps the cost linear however many faces share an edge.
+func duplicated(t, next []int32, seen map[[3]int32]struct{}, f int32) bool {
+	h := 3 * f
+	g := next[h]
+	if g == h {
+		return false
+	}
+	third := func(h int32) int32 { return t[h-h%3+(h+2)%3] }
+	if next[g] == h {
+		return g < h && t[g] == t[h] && third(g) == third(h)
+	}
+	key := [3]int32{t[h], t[h+1], t[h+2]}
+	for key[0] > key[1] || key[0] > key[2] {
+		key[0], key[1], key[2] = key[1], key[2], key[0]
+	}
+	_, twice := seen[key]
+	seen[key] = struct{}{}
+	return twice
+}
+
+// orient turns faces so that two faces of one edge run along it in opposite
+// directions, as far as the surface allows, and marks the edges where it does not
+// (a Möbius band has some). Edges with more than two faces pass nothing on.
+func (s *Surface) orient() {
+	s.Glue = glue(s.Vert, s.NumVertices)
+	const unseen, kept, turned = 0, 1, 2
+	state := make([]uint8, len(s.Vert)/3)
+	var stack []int32
+	anyTurned := false
+	for f := range int32(len(state)) {
+		if state[f] != unseen {
+			continue
+		}
+		state[f] = kept
+		stack = append(stack[:0], f)
+		for len(stack) > 0 {
+			f := stack[len(stack)-1]
+			stack = stack[:len(stack)-1]
+			for h := 3 * f; h < 3*f+3; h++ {
+				g := s.Glue[h]
+				if g == h || s.Glue[g] != h || state[g/3] != unseen {
+					continue
+				}
+				state[g/3] = state[f]
+				if s.Vert[g] == s.Vert[h] {
+					state[g/3] = kept + turned - state[f]
+				}
+				anyTurned = anyTurned || state[g/3] == turned
+				stack = append(stack, g/3)
+			}
+		}
+	}
+	if anyTurned {
+		for f, st := range state {
+			if st == turned {
+				s.Vert[3*f+1], s.Vert[3*f+2] = s.Vert[3*f+2], s.Vert[3*f+1]
+			}
+		}
+		s.Glue = glue(s.Vert, s.NumVertices)
+	}
+	s.mark = make([]int32, len(s.Vert))
+	for h, g := range s.Glue {
+		if int(g) != h && s.Glue[g] == int32(h) && s.Vert[g] == s.Vert[h] {
+			s.mark[h] = seam
+		}
+	}
+}
+
+// guardLengths lengthens edges until every triangle has a slack of slackFloor. An
+// edge that grows may spoil a neighbour, which is then looked at again; the growth
+// dies out, since each triangle needs a part of its own length only once.
+func (s *Surface) guardLengths() {
+	original := map[int32]float64{} // by smallest halfedge of the edge
+	first := func(h int32) int32 {
+		lo := h
+		for g := s.Glue[h]; g != h; g = s.Glue[g] {
+			lo = min(lo, g)
+		}
+		return lo
+	}
+	var work []int32
+	for f := range int32(len(s.Vert) / 3) {
+		if s.slack(f) < slackFloor {
+			work = append(work, f)
+		}
+	}
+	for rounds := 0; len(work) > 0 && rounds < 60; rounds++ {
+		var again []int32
+		for _, f := range work {
+			h := s.longest(f)
+			missing := (1.25*slackFloor - s.slack(f)) * s.Length[h]
+			if s.slack(f) >= slackFloor {
+				continue
+			}
+			for _, g := range [2]int32{next(h), prev(h)} {
+				lo := first(g)
+				if _, known := original[lo]; !known {
+					original[lo] = s.Length[g]
+				}
+				longer := s.Length[g] + missing/2
+				s.Length[g] = longer
+				for k := s.Glue[g]; k != g; k = s.Glue[k] {
+					s.Length[k] = longer
+					again = append(again, k/3)
+				}
+			}
+			again = append(again, f)
+		}
+		work = work[:0]
+		for _, f := range again {
+			if s.slack(f) < slackFloor {
+				work = append(work, f)
+			}
+		}
+	}
+	for lo, before := range original {
+		grown := s.Length[lo] - before
+		s.Guard.Largest = max(s.Guard.Largest, grown)
+		s.Guard.Relative = max(s.Guard.Relative, grown/s.Length[s.longest(lo/3)])
+	}
+	s.Guard.Edges = len(original)
+}
+
+// slack is how far face f is from flat: the two shorter edges' excess over the
+// longest, relative to that.
+func (s *Surface) slack(f int32) float64 {
+	h := s.longest(f)
+	c := s.Length[h]
+	a, b := s.Length[next(h)], s.Length[prev(h)]
+	return (min(a, b) - (c - max(a, b))) / c
+}
+
+// longest is the halfedge of f that is longest.
+func (s *Surface) longest(f int32) int32 {
+	h := 3 * f
+	for k := h + 1; k < 3*f+3; k++ {
+		if s.Length[k] > s.Length[h] {
+			h = k
+		}
+	}
+	return h
+}
+
+// NumFaces is the number of triangles.
+func (s *Surface) NumFaces() int { return len(s.Vert) / 3 }
+
+// Cot is the cotangent of the angle opposite halfedge h in its face.
+func (s *Surface) Cot(h int32) float64 { return s.cot[h] }
+
+// Area of face f.
+func (s *Surface) Area(f int32) float64 {
+	return triangleArea(s.Length[3*f], s.Length[3*f+1], s.Length[3*f+2])
+}
+
+// Angle is the angle of a face at the tail of halfedge h, in radians.
+func (s *Surface) Angle(h int32) float64 {
+	return math.Atan2(1, s.cot[next(h)])
+}
+
+// setCotangents works out the cotangents of face f from its lengths.
+func (s *Surface) setCotangents(f int32) {
+	a, b, c := s.Length[3*f], s.Length[3*f+1], s.Length[3*f+2]
+	fourArea := 4 * triangleArea(a, b, c)
+	s.cot[3*f] = (b*b + (c-a)*(c+a)) / fourArea
+	s.cot[3*f+1] = (c*c + (a-b)*(a+b)) / fourArea
+	s.cot[3*f+2] = (a*a + (b-c)*(b+c)) / fourArea
+}
+
+// Boundary tells whether halfedge h is alone on its edge.
+func (s *Surface) Boundary(h int32) bool { return s.Glue[h] == h }
+
+// Opposite is the halfedge that runs the other way along h where exactly two faces
+// meet and agree in orientation; -1 otherwise.
+func (s *Surface) Opposite(h int32) int32 {
+	g := s.Glue[h]
+	if g == h || s.Glue[g] != h || s.mark[h] == seam {
+		return -1
+	}
+	return g
+}
+
+func (s *Surface) head(h int32) int32 { return s.Vert[next(h)] }
+
+// next and prev are the halfedges after and before h in its face.
+func next(h int32) int32 {
+	if h%3 == 2 {
+		return h - 2
+	}
+	return h + 1
+}
+
+func prev(h int32) int32 {
+	if h%3 == 0 {
+		return h + 2
+	}
+	return h - 1
+}
+
+func dist(x []float64, a, b int32) float64 {
+	d0, d1, d2 := x[3*b]-x[3*a], x[3*b+1]-x[3*a+1], x[3*b+2]-x[3*a+2]
+	return math.Sqrt(d0*d0 + d1*d1 + d2*d2)
+}
+
+// triangleArea is the area from three lengths, stable for needles and caps (W.
+// Kahan, Miscalculating Area and Angles of a Needle-like Triangle, 2014). It is 0
+// where the triangle inequality fails.
+func triangleArea(a, b, c float64) float64 {
+	if a < b {
+		a, b = b, a
+	}
+	if a < c {
+		a, c = c, a
+	}
+	if b < c {
+		b, c = c, b
+	}
+	p := (a + (b + c)) * (c - (a - b)) * (c + (a - b)) * (a + (b - c))
+	if !(p > 0) {
+		return 0
+	}
+	return math.Sqrt(p) / 4
+}
+
+// hasArea tells whether three positions span a triangle, beyond rounding.
+func hasArea(x []float64, a, b, c int32) bool {
+	u0, u1, u2 := x[3*b]-x[3*a], x[3*b+1]-x[3*a+1], x[3*b+2]-x[3*a+2]
+	w0, w1, w2 := x[3*c]-x[3*a], x[3*c+1]-x[3*a+1], x[3*c+2]-x[3*a+2]
+	n0, n1, n2 := u1*w2-u2*w1, u2*w0-u0*w2, u0*w1-u1*w0
+	e0, e1, e2 := w0-u0, w1-u1, w2-u2
+	longest := max(u0*u0+u1*u1+u2*u2, w0*w0+w1*w1+w2*w2, e0*e0+e1*e1+e2*e2)
+	return math.Sqrt(n0*n0+n1*n1+n2*n2) > 2*flatArea*longest
+}
