@@ -77,7 +77,8 @@ func (q *Process) probePoints(r *ritz) {
 // take the maximum over points as close as the Ritz values themselves. It is carried
 // over to the largest entry with the largest entry that any basis vector (of M norm
 // 1) has: the error lies along the coming ones, which are no rougher. The factor 2
-// stands for the second and later of those. Cost: O(Len²) beyond the first call after
+// stands for the second and later of those; a few rounding units of the sums are
+// added, so that no estimate claims more than double precision gives. Cost: O(Len²) beyond the first call after
 // Extend, which costs O(Len³).
 func (q *Process) Evaluate(g Function) (y []float64, norm, estimate float64) {
 	m := len(q.alpha)
@@ -90,8 +91,10 @@ func (q *Process) Evaluate(g Function) (y []float64, norm, estimate float64) {
 	}
 	r := q.decompose()
 	gz := make([]float64, m)
+	steepest := 0.0
 	for j, z := range r.z {
 		gz[j] = g(min(1, max(0, z)))
+		steepest = max(steepest, math.Abs(gz[j]))
 		c := q.start * r.first[j] * gz[j]
 		for i := range y {
 			y[i] += c * r.q[i*m+j]
@@ -101,8 +104,9 @@ func (q *Process) Evaluate(g Function) (y []float64, norm, estimate float64) {
 		norm += c * c
 	}
 	norm = math.Sqrt(norm)
+	rounding := 0x1p-50 * q.peak * q.start * steepest
 	if q.exhausted {
-		return y, norm, 0
+		return y, norm, rounding
 	}
 	worst := 0.0
 	for _, z := range r.probe {
@@ -112,5 +116,5 @@ func (q *Process) Evaluate(g Function) (y []float64, norm, estimate float64) {
 		}
 		worst = max(worst, math.Abs(sum))
 	}
-	return y, norm, 2 * q.peak * q.start * q.beta[m-1] * worst
+	return y, norm, 2*q.peak*q.start*q.beta[m-1]*worst + rounding
 }
