@@ -61,6 +61,9 @@ func (s *Surface) Place(data []Datum) error {
 	return nil
 }
 
+// NumData is the number of data that Place was given.
+func (s *Surface) NumData() int { return len(s.sites) }
+
 // Site is the vertex of datum i after Place, or -1 where the datum is made of edges.
 func (s *Surface) Site(i int) int32 { return s.sites[i] }
 

@@ -1,0 +1,393 @@
+package kernel
+
+import (
+	"math"
+
+	"heatskin/mesh"
+)
+
+// A front is the state of a wave front that sweeps over a surface. At each vertex
+// that it has passed it knows when it arrived (the distance), how curved it was then,
+// and from where in the vertex's own frame of angles it came. That is enough to
+// continue it through a triangle: near vertex a the distance is
+//
+//	d(x) = d(a) + (κ|x|² - 2 e·x) / (|e - κx| + 1),
+//
+// the distance from the point a + e/κ, with e the unit vector back along the ray and
+// κ the curvature of the front: κ > 0 spreads from a centre behind, κ = 0 is a plane
+// wave, κ < 0 converges. On flat faces this is an unfolding, exact but for rounding;
+// on curved skins κ follows the Jacobi equation with the surface's Gaussian curvature
+// (do Carmo, Riemannian Geometry, 1992, ch. 5).
+type front struct {
+	s     *mesh.Surface
+	frame *frames
+
+	d     []float64 // distance, by vertex; +Inf where the front has not been
+	kappa []float64 // curvature of the front; +Inf at a source
+	back  []float64 // angle of the ray back, in the vertex's frame; NaN where there is none
+	noise []float64 // how far directions may be off, from the curvature the ray has met
+	done  []bool    // may give its value on
+	fixed []bool    // a source: not to be changed
+	line  []bool    // by halfedge: the edge is a source as a whole; nil if there are none
+}
+
+const (
+	// flatNoise is the disagreement, relative to an edge, that rounding explains.
+	flatNoise = 1e-7
+	// curvedNoise times K·h², the turn of a frame from one vertex to the next, is the
+	// disagreement that discretisation explains. Chosen on spheres, tori and
+	// paraboloids of 2 500 to 160 000 vertices: from 5 to 40 the errors hardly change.
+	curvedNoise = 15
+	// rim lets a ray pass an edge's end by this part of the edge, so that a ray through
+	// a vertex is found from at least one side.
+	rim = 1e-9
+)
+
+func newFront(s *mesh.Surface, f *frames) *front {
+	n := s.NumVertices
+	return &front{
+		s: s, frame: f,
+		d: make([]float64, n), kappa: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
+		done: make([]bool, n), fixed: make([]bool, n),
+	}
+}
+
+// start forgets the last wave and sets the sources: vertices, and edges as a whole.
+func (w *front) start(vertices []int32, line []bool) {
+	for v := range w.d {
+		w.d[v], w.done[v], w.fixed[v] = math.Inf(1), false, false
+	}
+	w.line = line
+	source := func(v int32) {
+		w.d[v], w.kappa[v], w.back[v], w.noise[v] = 0, math.Inf(1), math.NaN(), 0
+		w.done[v], w.fixed[v] = true, true
+	}
+	for _, v := range vertices {
+		source(v)
+	}
+	for h, on := range line {
+		if on {
+			source(w.s.Vert[h])
+			source(w.s.Vert[next(int32(h))])
+		}
+	}
+}
+
+// An arrival is the front's state at a vertex.
+type arrival struct{ d, kappa, back, noise float64 }
+
+// sweep takes the vertices in the given order once, each from those before it.
+// Values of vertices yet to come, from an earlier sweep, are believed where they tell
+// that a corner casts a shadow, and nowhere else.
+func (w *front) sweep(order []int32) {
+	for v := range w.done {
+		w.done[v] = w.fixed[v]
+	}
+	for _, v := range order {
+		if w.fixed[v] {
+			continue
+		}
+		w.set(v, w.arrive(v))
+		w.done[v] = !math.IsInf(w.d[v], 1)
+	}
+}
+
+func (w *front) set(v int32, a arrival) {
+	w.d[v], w.kappa[v], w.back[v], w.noise[v] = a.d, a.kappa, a.back, a.noise
+}
+
+// mend takes up whatever a vertex later in the order could have told an earlier one:
+// values go down until none can. It returns how many vertices changed.
+func (w *front) mend(order []int32) (changed int) {
+	var queue vertexHeap
+	queued := make([]bool, len(w.d))
+	try := func(v int32) bool {
+		if w.fixed[v] {
+			return false
+		}
+		a := w.arrive(v)
+		if !(a.d < w.d[v]-w.slack(v)) {
+			return false
+		}
+		w.set(v, a)
+		w.done[v] = true
+		changed++
+		return true
+	}
+	wake := func(v int32) {
+		for _, h := range w.frame.out(v) {
+			for _, u := range [2]int32{w.s.Vert[next(h)], w.s.Vert[prev(h)]} {
+				if !queued[u] && !w.fixed[u] && w.d[u] > w.d[v]-w.s.Length[h] {
+					queued[u] = true
+					queue.push(w.d[v], u)
+				}
+			}
+		}
+	}
+	for _, v := range order {
+		if try(v) {
+			wake(v)
+		}
+	}
+	for looks := 0; len(queue) > 0 && looks < 60*len(w.d); looks++ {
+		v := queue.pop()
+		queued[v] = false
+		if try(v) {
+			wake(v)
+		}
+	}
+	return changed
+}
+
+// slack is how much lower a value must be to be taken up: more than rounding, and more
+// than the spread of equally good values on a curved skin, of which the least is no
+// better than the first.
+func (w *front) slack(v int32) float64 {
+	if math.IsInf(w.d[v], 1) {
+		return 0
+	}
+	return 1e-13*w.d[v] + w.noise[v]*w.frame.edge[v]
+}
+
+// arrive continues the front to vertex v: the least value over its triangles.
+func (w *front) arrive(v int32) arrival {
+	best := arrival{d: math.Inf(1), back: math.NaN()}
+	for _, h := range w.frame.out(v) {
+		h1, h2 := next(h), prev(h)
+		a, b := w.s.Vert[h1], w.s.Vert[h2]
+		if w.done[a] {
+			w.alongEdge(&best, v, a, w.s.Length[h], w.frame.at[h1]+w.frame.angle(h1), w.frame.at[h])
+		}
+		if w.done[b] {
+			w.alongEdge(&best, v, b, w.s.Length[h2], w.frame.at[h2], w.frame.at[h]+w.frame.angle(h))
+		}
+		if w.done[a] || w.done[b] {
+			w.throughEdge(&best, v, a, b, h)
+		}
+	}
+	return best
+}
+
+// alongEdge takes the front from q along an edge to v. Where the ray to q runs on along
+// that edge the front just goes on. Everywhere else it starts anew at q, as it does at
+// a source and behind a corner that casts a shadow (a saddle, a re-entrant rim): a path
+// that bends at q is real, so its length can be too long, but never too short, and is
+// kept only until something better comes.
+func (w *front) alongEdge(best *arrival, v, q int32, length, fromQ, fromV float64) {
+	value := w.d[q] + length
+	if value >= best.d {
+		return
+	}
+	kappa := 1 / length
+	if !math.IsInf(w.kappa[q], 1) && w.straight(q, fromQ) {
+		kappa = w.kappa[q] / max(1+w.kappa[q]*length, 1e-9)
+	}
+	*best = arrival{value, w.bend(kappa, length, v), fromV, max(w.noise[q], w.frame.turning[v])}
+}
+
+// bend corrects the curvature of a front that reached v over the given length on a
+// plane by what Gaussian curvature K does to it on the way: to first order in K, with
+// J the Jacobi field, dκ = -K ∫ J² ds / J(v)².
+func (w *front) bend(kappa, length float64, v int32) float64 {
+	x := kappa * length
+	return kappa - w.frame.curvature[v]*length*(1-x+x*x/3)
+}
+
+// straight tells whether a ray that comes to q goes on in the direction at angle to
+// (in q's frame): the half turn lies on either side, within what is known of it.
+func (w *front) straight(q int32, to float64) bool {
+	if math.IsNaN(w.back[q]) {
+		return true // no frame: nothing speaks against it
+	}
+	tol := flatNoise + curvedNoise*w.noise[q]
+	left, right := w.frame.turn(q, w.back[q], to), w.frame.turn(q, to, w.back[q])
+	return math.Abs(left-math.Pi) <= tol || math.Abs(right-math.Pi) <= tol
+}
+
+// throughEdge takes the front through the edge ab of the face (v, a, b) of h: v→a.
+//
+// Where both ends know the front, and each foretells what the other has, they are
+// passed by the same front: its direction follows from d(a) and d(b), and its
+// curvature from both. Where they disagree, two fronts meet between a and b (the
+// cut locus) or one end lies in a shadow; then each goes on with what it knows alone.
+func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
+	h1, h2 := next(h), prev(h)
+	length, la, lb := w.s.Length[h1], w.s.Length[h], w.s.Length[h2]
+	// The plane of the face: a = (0, 0), b = (length, 0), v = (x, y) above.
+	tri := triangle{length: length, x: (length + (la-lb)*(la+lb)/length) / 2}
+	tri.y = math.Sqrt(max(0, (la-tri.x)*(la+tri.x)))
+	if tri.y == 0 {
+		return
+	}
+	if w.line != nil && w.line[h1] {
+		if tri.x >= 0 && tri.x <= length && tri.y < best.d {
+			*best = arrival{tri.y, w.bend(0, tri.y, v), w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v]}
+		}
+		return
+	}
+	da, db := w.d[a], w.d[b]
+	if min(da, db) >= best.d { // the front passes the edge where it is not before v
+		return
+	}
+	noise := max(w.noise[a], w.noise[b])
+	if !(w.done[a] && w.done[b]) {
+		noise = w.noise[a]
+		if w.done[b] {
+			noise = w.noise[b]
+		}
+	}
+	noise = max(noise, w.frame.turning[v])
+	tol := length*(flatNoise+curvedNoise*noise) + 1e-12*max(min(da, db), length)
+
+	var ra, rb ray
+	var knowsA, knowsB, agreesA, agreesB bool
+	if !math.IsInf(da, 1) {
+		ra, knowsA = w.rayAt(a, w.frame.turn(a, w.back[a], w.frame.at[h1]), false, tri)
+		agreesA = knowsA && math.Abs(ra.at(length, 0)-db) <= tol
+	}
+	if !math.IsInf(db, 1) {
+		rb, knowsB = w.rayAt(b, w.frame.turn(b, w.frame.at[h2]+w.frame.angle(h2), w.back[b]), true, tri)
+		agreesB = knowsB && math.Abs(rb.at(0, 0)-da) <= tol
+	}
+	both := w.done[a] && w.done[b]
+	if both && math.IsNaN(w.back[a]) && math.IsNaN(w.back[b]) && !math.IsInf(w.kappa[a], 1) && !math.IsInf(w.kappa[b], 1) {
+		// No frame at either end (edges with more than two faces): believe the values.
+		ra, agreesA = ray{kappa: w.kappa[a], d: da}, true
+		rb, agreesB = ray{kappa: w.kappa[b], d: db, x: length}, true
+	}
+	offer := func(r ray, share float64, s ray) {
+		x, ok := r.crossing(tri)
+		if !ok {
+			return
+		}
+		value, kappa := r.reach(tri)
+		if share < 1 {
+			xs, ok := s.crossing(tri)
+			if !ok {
+				return
+			}
+			x = (x + xs) / 2
+			share = 1 - min(max(x/length, 0), 1)
+			other, otherKappa := s.reach(tri)
+			value = share*value + (1-share)*other
+			kappa = share*kappa + (1-share)*otherKappa
+		}
+		if value < best.d {
+			run := math.Hypot(x-tri.x, tri.y)
+			*best = arrival{value, w.bend(kappa, run, v), w.frame.at[h] + tri.angleAtV(x), noise}
+		}
+	}
+	if both && (agreesA || agreesB) {
+		okA, okB := agreesA && ra.aim(db, length), agreesB && rb.aim(da, -length)
+		switch {
+		case okA && okB:
+			offer(ra, 0.5, rb)
+			return
+		case okA:
+			offer(ra, 1, ra)
+			return
+		case okB:
+			offer(rb, 1, rb)
+			return
+		}
+	}
+	if knowsA && w.done[a] && !(ra.at(length, 0) < db-tol && !math.IsInf(db, 1) && ra.shaded(rb, knowsB, tri, 1)) {
+		offer(ra, 1, ra)
+	}
+	if knowsB && w.done[b] && !(rb.at(0, 0) < da-tol && !math.IsInf(da, 1) && rb.shaded(ra, knowsA, tri, -1)) {
+		offer(rb, 1, rb)
+	}
+}
+
+// triangle is a face laid into the plane: a = (0, 0), b = (length, 0), v = (x, y).
+type triangle struct{ length, x, y float64 }
+
+// angleAtV is the angle at v from the corner a to the point x on the edge ab.
+func (t triangle) angleAtV(x float64) float64 {
+	return math.Atan2(t.y*x, t.x*(t.x-x)+t.y*t.y)
+}
+
+// A ray is the front near one end of an edge ab, in the frame of the face beyond: it
+// passed (x, 0) at d with curvature kappa, coming from direction (ex, ey), ey < 0.
+type ray struct{ d, kappa, x, ex, ey float64 }
+
+// rayAt lays the front at q into the frame of a face that it enters through an edge.
+// gap is the angle at q between the ray back and that edge, on the far side. It is
+// not known where the ray does not come through the edge, and at sources.
+func (w *front) rayAt(q int32, gap float64, atB bool, t triangle) (r ray, known bool) {
+	if !(gap < math.Pi) || math.IsInf(w.kappa[q], 1) { // NaN: no direction
+		return ray{}, false
+	}
+	sin, cos := math.Sincos(gap)
+	r = ray{d: w.d[q], kappa: w.kappa[q], ex: cos, ey: -sin}
+	if atB {
+		r.x, r.ex = t.length, -cos
+	}
+	return r, true
+}
+
+// at is the distance that the ray foretells at (x, y).
+func (r ray) at(x, y float64) float64 {
+	x -= r.x
+	return r.d + (r.kappa*(x*x+y*y)-2*(r.ex*x+r.ey*y))/(math.Hypot(r.ex-r.kappa*x, r.ey-r.kappa*y)+1)
+}
+
+// aim turns the ray so that it foretells the value other at the edge's other end,
+// which is at the given signed distance; false if no direction does.
+func (r *ray) aim(other, length float64) bool {
+	rise := other - r.d
+	e := (r.kappa*length*length - rise*(2+r.kappa*rise)) / (2 * length)
+	if !(math.Abs(e) < 1) {
+		return false
+	}
+	r.ex, r.ey = e, -math.Sqrt((1-e)*(1+e))
+	return true
+}
+
+// crossing is where on the edge the ray to v passes; false if it passes beside it.
+func (r ray) crossing(t triangle) (x float64, ok bool) {
+	ahead := r.kappa*t.y - r.ey
+	if !(ahead > 0) {
+		return 0, false // the front converges before it gets to v
+	}
+	x = r.x + (r.ex*t.y-r.ey*(t.x-r.x))/ahead
+	return x, x >= -rim*t.length && x <= (1+rim)*t.length
+}
+
+// reach is the distance that the ray foretells at v, and the front's curvature there
+// as long as all is flat.
+func (r ray) reach(t triangle) (value, kappa float64) {
+	x := t.x - r.x
+	rho := math.Hypot(r.ex-r.kappa*x, r.ey-r.kappa*t.y)
+	value = r.d + (r.kappa*(x*x+t.y*t.y)-2*(r.ex*x+r.ey*t.y))/(rho+1)
+	return value, r.kappa / max(rho, 1e-9)
+}
+
+// shaded tells whether v lies in the shadow that ends between the ends of the edge.
+// r foretells less than the other end has, so something stands between: the centre of
+// the other front, if that is known, and rays are cut off there. side is 1 if the
+// other end is b. Without a known centre half of the edge counts as lit.
+func (r ray) shaded(other ray, known bool, t triangle, side float64) bool {
+	if !known || !(other.kappa > 0) {
+		x, _ := r.crossing(t)
+		return math.Abs(x-r.x) > t.length/2
+	}
+	cx, cy := other.x+other.ex/other.kappa, other.ey/other.kappa // the other front's centre
+	// Direction of the ray to v, and from v to that centre.
+	dx, dy := r.kappa*(t.x-r.x)-r.ex, r.kappa*t.y-r.ey
+	return side*(dx*(cy-t.y)-dy*(cx-t.x)) > 1e-12*(math.Abs(dx)+math.Abs(dy))*(math.Abs(cx-t.x)+math.Abs(cy-t.y))
+}
+
+func next(h int32) int32 {
+	if h%3 == 2 {
+		return h - 2
+	}
+	return h + 1
+}
+
+func prev(h int32) int32 {
+	if h%3 == 0 {
+		return h + 2
+	}
+	return h - 1
+}
