@@ -8,10 +8,11 @@ import (
 
 // BracketSize gives the dimensions of a Bracket.
 type BracketSize struct {
-	Width, Leg          float64 // along y; of each leg beyond the fillet
-	Thickness, Inner    float64 // of the sheet; radius of the fillet inside
-	Holes, Segments     int     // holes per leg; sides of each hole and of the fillet's quarter
-	HoleRadius, HoleSum float64 // largest radius; area of all polygonal holes of one leg
+	Width, Leg        float64 // along y; of each leg beyond the fillet
+	Thickness, Inner  float64 // of the sheet; radius of the fillet inside
+	Holes, Segments   int     // holes per leg; sides of each hole and of the fillet's quarter
+	HoleRadius        float64 // of the largest
+	HoleSum, HoleRims float64 // area of one leg's holes, polygons as they are; length of their rims on one face
 }
 
 // Bracket is an angle bracket bent from perforated sheet, closed, as CAD writes it
@@ -70,7 +71,7 @@ func Bracket(holes, segments int) (*mesh.Mesh, BracketSize) {
 	}
 	lower := func(x, y, depth float64) [3]float64 { return [3]float64{x, y, depth} }
 	upright := func(x, y, depth float64) [3]float64 { return [3]float64{depth, y, x} }
-	s.HoleSum = b.perforate(s, outer, lower, [4]int32{front[0], front[1], back[1], back[0]},
+	s.HoleSum, s.HoleRims = b.perforate(s, outer, lower, [4]int32{front[0], front[1], back[1], back[0]},
 		[4]int32{front[3], front[2], back[2], back[3]}, false)
 	b.perforate(s, outer, upright, [4]int32{front[outside+1], front[outside], back[outside], back[outside+1]},
 		[4]int32{front[inside], front[inside+1], back[inside+1], back[inside]}, true)
@@ -79,10 +80,10 @@ func Bracket(holes, segments int) (*mesh.Mesh, BracketSize) {
 
 // perforate adds one leg's two faces, at depth 0 (corners below) and at the sheet's
 // thickness (above), and the walls of the holes between them; place maps (along the
-// leg, along y, depth) to space, mirror tells that it turns handedness over. Returns
-// the area of the holes.
+// leg, along y, depth) to space, mirror tells that it turns handedness over. It gives
+// the area and the rims' length of the holes on one face.
 func (b *builder) perforate(s BracketSize, from float64, place func(x, y, depth float64) [3]float64,
-	below, above [4]int32, mirror bool) (area float64) {
+	below, above [4]int32, mirror bool) (area, rims float64) {
 	triangle := func(u, v, w int32) {
 		if mirror {
 			v, w = w, v
@@ -114,7 +115,9 @@ func (b *builder) perforate(s BracketSize, from float64, place func(x, y, depth 
 			triangle(low[u], high[v], high[u])
 		}
 		holes = append(holes, hole)
-		area += radius * radius / 2 * float64(s.Segments) * math.Sin(2*math.Pi/float64(s.Segments))
+		sides := float64(s.Segments)
+		area += radius * radius / 2 * sides * math.Sin(2*math.Pi/sides)
+		rims += 2 * radius * sides * math.Sin(math.Pi/sides)
 	}
 	corners := earClip(plan, []int32{0, 1, 2, 3}, holes)
 	for t := 0; t < len(corners); t += 3 {
@@ -122,7 +125,7 @@ func (b *builder) perforate(s BracketSize, from float64, place func(x, y, depth 
 		triangle(high[u], high[v], high[w])
 		triangle(low[u], low[w], low[v])
 	}
-	return area
+	return area, rims
 }
 
 // Extrusion is the closed solid over a simple polygon in x, z (counter-clockwise in

@@ -33,9 +33,10 @@ func MoebiusBand(n, m int) *mesh.Mesh {
 	return b.mesh()
 }
 
-// Book is flat unit pages, pages of them, that share their spine (x = y = 0, z from
-// 0 to 1): n cells along the spine and across each page. With more than two pages
-// every edge on the spine has that many faces. Vertices 0 to n are the spine.
+// Book is flat unit pages, pages of them, spread evenly round the spine that they
+// share (x = y = 0, z from 0 to 1): n cells along the spine and across each page. With
+// more than two pages every edge on the spine has that many faces. Vertices 0 to n are
+// the spine; all pages run along it the same way, so that they are not of one orientation.
 func Book(pages, n int) *mesh.Mesh {
 	b := newBuilder(0, 0)
 	h := 1 / float64(n)
@@ -43,7 +44,7 @@ func Book(pages, n int) *mesh.Mesh {
 		b.vertex([3]float64{0, 0, h * float64(k)})
 	}
 	for page := range pages {
-		sin, cos := math.Sincos(math.Pi * float64(page) / float64(pages))
+		sin, cos := math.Sincos(2 * math.Pi * float64(page) / float64(pages))
 		first := int32(len(b.positions) / 3)
 		for i := 1; i <= n; i++ {
 			for k := range n + 1 {

@@ -1,0 +1,186 @@
+package mesh
+
+import (
+	"math"
+	"slices"
+)
+
+// Creases lists the edges whose bend angle is above degrees (flat = 0, folded back =
+// 180), each once with its smaller vertex first, in order of the halfedge that names
+// the edge first. Bends says what the bend angle is. O(n).
+func Creases(m *Mesh, degrees float64) [][2]int32 {
+	glued := glue(m.Triangles, m.NumVertices())
+	bend := bends(m, glued)
+	limit := degrees * math.Pi / 180
+	var edges [][2]int32
+	eachInnerEdge(glued, func(h int32) {
+		if bend[h] > limit {
+			a, b := m.Triangles[h], m.Triangles[next(h)]
+			edges = append(edges, [2]int32{min(a, b), max(a, b)})
+		}
+	})
+	return edges
+}
+
+// eachInnerEdge calls do with the least halfedge of every edge that has two faces or
+// more, in rising order. O(n), however many faces share an edge.
+func eachInnerEdge(glued []int32, do func(h int32)) {
+	seen := map[int32]bool{} // later halfedges of edges with more than two faces
+	for h, o := range glued {
+		h := int32(h)
+		switch {
+		case o == h:
+		case glued[o] == h:
+			if h < o {
+				do(h)
+			}
+		case !seen[h]:
+			do(h)
+			for ; o != h; o = glued[o] {
+				seen[o] = true
+			}
+		}
+	}
+}
+
+// Bends gives for each halfedge 3f+k of m the bend angle of its edge, in radians: by
+// how much the surface turns there, 0 where it goes on flat and pi where it folds back
+// on itself. It is NaN on the boundary. How the two faces are oriented does not matter.
+//
+// An edge with more than two faces bends as much as the face that goes on least: each
+// face is measured against the one that continues it best, and the largest of these
+// angles counts. (A stiffener on a plate makes 90 degrees, a face written twice 0.)
+//
+// A triangle too flat to have a direction (its height is lost in the rounding of its
+// coordinates) is looked through: its longest edge counts as flat, and across its
+// other edges the face beyond the longest stands for it. O(n), or O(k log k) for an
+// edge of k faces.
+func Bends(m *Mesh) []float64 { return bends(m, glue(m.Triangles, m.NumVertices())) }
+
+func bends(m *Mesh, glued []int32) []float64 {
+	bend := make([]float64, len(m.Triangles))
+	for h := range bend {
+		bend[h] = math.NaN()
+	}
+	noise := m.noise()
+	var directions [][3]float64
+	eachInnerEdge(glued, func(h int32) {
+		directions = directions[:0]
+		for o := h; ; {
+			if d, ok := m.into(o, glued, noise); ok {
+				directions = append(directions, d)
+			}
+			if o = glued[o]; o == h {
+				break
+			}
+		}
+		angle := 0.0
+		switch {
+		case len(directions) == 2:
+			a, b := directions[0], directions[1]
+			angle = math.Atan2(length3(cross3(a, b)), -dot3(a, b))
+		case len(directions) > 2:
+			angle = leastContinued(directions)
+		}
+		for o := h; ; {
+			bend[o] = angle
+			if o = glued[o]; o == h {
+				break
+			}
+		}
+	})
+	return bend
+}
+
+// noise is the height up to which a triangle has no direction: 16 times what single
+// precision rounds off, and a millionth of the part's size, which no file is exact to.
+func (m *Mesh) noise() float64 {
+	lo, hi := emptyBox()
+	largest, single := 0.0, true
+	for i, x := range m.Positions {
+		axis := i % 3
+		lo[axis], hi[axis] = min(lo[axis], x), max(hi[axis], x)
+		largest = max(largest, math.Abs(x))
+		single = single && float64(float32(x)) == x
+	}
+	noise := 0x1p-20 * max(hi[0]-lo[0], hi[1]-lo[1], hi[2]-lo[2])
+	if single {
+		noise = max(noise, 0x1p-20*largest)
+	}
+	return noise
+}
+
+// into is a vector at a right angle to halfedge h that points into its face, or into
+// the face that stands for it where that one is flat; false if none does. It is as
+// long as the face is high over h.
+func (m *Mesh) into(h int32, glued []int32, noise float64) (d [3]float64, ok bool) {
+	t, x := m.Triangles, m.Positions
+	a, b := point3(x, t[h]), point3(x, t[next(h)])
+	const most = 16 // flat triangles in a row
+	for range most {
+		corner := 3 * (h / 3)
+		p, q, r := point3(x, t[corner]), point3(x, t[corner+1]), point3(x, t[corner+2])
+		longest, length := corner, length3(minus3(q, p))
+		if l := length3(minus3(r, q)); l > length {
+			longest, length = corner+1, l
+		}
+		if l := length3(minus3(p, r)); l > length {
+			longest, length = corner+2, l
+		}
+		if length3(cross3(minus3(q, p), minus3(r, p))) > noise*length {
+			e, c := minus3(b, a), minus3(point3(x, t[prev(h)]), a)
+			along := dot3(c, e) / dot3(e, e)
+			for axis := range d {
+				d[axis] = c[axis] - along*e[axis]
+			}
+			return d, dot3(e, e) > 0
+		}
+		beyond := glued[longest]
+		if longest == h || beyond == longest || glued[beyond] != longest {
+			return d, false
+		}
+		h = beyond
+	}
+	return d, false
+}
+
+// leastContinued takes vectors at right angles to one line and gives the largest of
+// their bends, each against that other one which continues it best.
+func leastContinued(d [][3]float64) float64 {
+	// Angles around the line, counted from the first vector.
+	u := d[0]
+	axis := [3]float64{}
+	for _, v := range d[1:] { // the vector that leaves u's line most clearly gives the turn's sense
+		if c := cross3(u, v); dot3(c, c) > dot3(axis, axis) {
+			axis = c
+		}
+	}
+	w := cross3(axis, u) // as long as |axis||u|, so it is scaled back below
+	scale := length3(axis)
+	if scale == 0 {
+		scale = 1
+	}
+	turns := make([]float64, len(d))
+	for i, v := range d {
+		turns[i] = math.Atan2(dot3(v, w)/scale, dot3(v, u))
+	}
+	slices.Sort(turns)
+	largest := 0.0
+	n := len(turns)
+	for i, a := range turns {
+		opposite := a + math.Pi
+		if opposite > math.Pi {
+			opposite -= 2 * math.Pi
+		}
+		at, _ := slices.BinarySearch(turns, opposite)
+		best := math.Inf(1)
+		for j := at - 2; j <= at+1; j++ { // the neighbours, past i itself
+			if k := (j + 2*n) % n; k != i {
+				off := math.Abs(turns[k] - opposite)
+				best = min(best, off, 2*math.Pi-off)
+			}
+		}
+		largest = max(largest, best)
+	}
+	return largest
+}
