@@ -1,0 +1,41 @@
+package cli
+
+import (
+	"bufio"
+	"os"
+	"runtime/metrics"
+	"strconv"
+	"strings"
+)
+
+// peakMemory is the most memory that the program has held so far, in bytes: as the
+// kernel counts it where it tells (Linux), otherwise what the Go runtime has taken
+// from the system, which it seldom gives back.
+func peakMemory() int64 {
+	if peak, ok := residentPeak("/proc/self/status"); ok {
+		return peak
+	}
+	sample := []metrics.Sample{{Name: "/memory/classes/total:bytes"}}
+	metrics.Read(sample)
+	if sample[0].Value.Kind() != metrics.KindUint64 {
+		return 0
+	}
+	return int64(sample[0].Value.Uint64())
+}
+
+// residentPeak reads the line "VmHWM:   12345 kB" of a Linux process status file.
+func residentPeak(name string) (bytes int64, ok bool) {
+	f, err := os.Open(name)
+	if err != nil {
+		return 0, false
+	}
+	defer f.Close()
+	lines := bufio.NewScanner(f)
+	for lines.Scan() {
+		if fields := strings.Fields(lines.Text()); len(fields) == 3 && fields[0] == "VmHWM:" {
+			kib, err := strconv.ParseInt(fields[1], 10, 64)
+			return 1024 * kib, err == nil
+		}
+	}
+	return 0, false
+}

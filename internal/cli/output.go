@@ -1,0 +1,245 @@
+package cli
+
+import (
+	"bufio"
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"slices"
+	"strings"
+
+	"github.com/spf13/pflag"
+
+	"heatskin/internal/fieldfile"
+	"heatskin/mesh"
+)
+
+// outputFlags say where results go: --out --probe --probe-out --summary.
+type outputFlags struct {
+	out      []string
+	probe    string
+	probeOut string
+	summary  string
+	tables   []string // further CSV files that the command's own flags name
+
+	points *probeTable // what --probe holds, once read
+}
+
+// A result is what a command found: fields over the vertices of the mesh that it
+// computed on, and which of these vertices have a row of their own.
+type result struct {
+	part     *mesh.Mesh // computed on; its first vertices are those of the file
+	rows     int        // vertices shown, from 0
+	fields   []fieldfile.Column
+	probed   []fieldfile.Column // fields at the probes, if they are not the linear ones
+	tables   []table
+	extended []float64 // positions of all vertices, if the computation added some to part's
+}
+
+// A table is a further file of a command.
+type table struct {
+	name  string
+	write func(io.Writer) error
+}
+
+// fieldFormats are the kinds of file that --out writes, by extension.
+var fieldFormats = map[string]func(io.Writer, *mesh.Mesh, int, []fieldfile.Column) error{
+	".csv": fieldfile.WriteCSV,
+	".ply": func(w io.Writer, m *mesh.Mesh, _ int, fields []fieldfile.Column) error {
+		return fieldfile.WritePLY(w, m, fields)
+	},
+}
+
+func extensions() string {
+	list := make([]string, 0, len(fieldFormats))
+	for ext := range fieldFormats {
+		list = append(list, ext)
+	}
+	slices.Sort(list)
+	return strings.Join(list, ", ")
+}
+
+func (o *outputFlags) register(flags *pflag.FlagSet) {
+	flags.StringArrayVar(&o.out, "out", nil, "write the field to `FILE`, "+extensions()+" (repeatable); without it, CSV goes to standard output")
+	flags.StringVar(&o.probe, "probe", "", "places to read the field at: `FILE.csv`, columns id,x,y,z")
+	flags.StringVar(&o.probeOut, "probe-out", "", "the field at the probes, as `FILE.csv`")
+	o.registerSummary(flags)
+}
+
+// registerSummary adds --summary alone, for a command without a field.
+func (o *outputFlags) registerSummary(flags *pflag.FlagSet) {
+	flags.StringVar(&o.summary, "summary", "", "what was run, on what, how long it took and what was checked, as `FILE.json`")
+}
+
+// prepare finds out what would keep the results from being written, before anything
+// long is computed: names of no known kind, two results for one file, a directory
+// that is not there. It also reads the probes.
+func (o *outputFlags) prepare(ctx context.Context, input string) error {
+	for _, name := range o.out {
+		if ext := strings.ToLower(filepath.Ext(name)); fieldFormats[ext] == nil {
+			return usagef("--out %s: want a name that ends in one of %s", name, extensions())
+		}
+	}
+	if (o.probe == "") != (o.probeOut == "") {
+		return usagef("--probe FILE.csv and --probe-out FILE.csv go together: one names the places, the other takes the values")
+	}
+	for _, name := range append([]string{o.probeOut}, o.tables...) {
+		if name != "" && strings.ToLower(filepath.Ext(name)) != ".csv" {
+			return usagef("%s: this table is written as CSV, want a name that ends in .csv", name)
+		}
+	}
+	seen := map[string]string{}
+	for _, name := range []string{input, o.probe} {
+		if name != "" && name != "-" {
+			seen[absolute(name)] = "an input"
+		}
+	}
+	for _, name := range o.files() {
+		key := absolute(name)
+		if was := seen[key]; was != "" {
+			return usagef("%s would be written over %s; choose another name", name, was)
+		}
+		seen[key] = "another result"
+	}
+	for _, name := range o.files() {
+		if err := writable(name); err != nil {
+			return err
+		}
+	}
+	if o.probe != "" {
+		var err error
+		if o.points, err = readProbes(ctx, o.probe); err != nil {
+			return refuse(err)
+		}
+	}
+	return nil
+}
+
+// files are all files to be written.
+func (o *outputFlags) files() []string {
+	list := slices.Clone(o.out)
+	for _, name := range append([]string{o.probeOut, o.summary}, o.tables...) {
+		if name != "" {
+			list = append(list, name)
+		}
+	}
+	return list
+}
+
+func absolute(name string) string {
+	if full, err := filepath.Abs(name); err == nil {
+		return full
+	}
+	return name
+}
+
+// writable tries whether a file of this name can be put in place.
+func writable(name string) error {
+	if info, err := os.Stat(name); err == nil && !info.Mode().IsRegular() {
+		return fmt.Errorf("%s: want a regular file to write, and this is none", name)
+	}
+	f, err := os.CreateTemp(filepath.Dir(name), ".heatskin-*.tmp")
+	if err != nil {
+		return fmt.Errorf("%s cannot be written: %w", name, plain(err))
+	}
+	f.Close()
+	return os.Remove(f.Name())
+}
+
+// plain strips the name of a temporary file off an error.
+func plain(err error) error {
+	var path *os.PathError
+	if errors.As(err, &path) {
+		return path.Err
+	}
+	return err
+}
+
+// save writes everything that a command found, each file whole or not at all. An
+// interrupt ends the file that is being written; Main waits until it is gone.
+func (o *outputFlags) save(ctx context.Context, j *job, r *result) error {
+	j.clock.enter("write")
+	shown := r.part
+	if r.rows > shown.NumVertices() {
+		shown = &mesh.Mesh{Positions: r.extended, Triangles: r.part.Triangles, File: r.part.File}
+	}
+	fields := make([]fieldfile.Column, len(r.fields))
+	for i, f := range r.fields {
+		fields[i] = fieldfile.Column{Name: f.Name, Values: f.Values[:r.rows]}
+	}
+
+	var pending []table
+	for _, name := range o.out {
+		write := fieldFormats[strings.ToLower(filepath.Ext(name))]
+		pending = append(pending, table{name, func(w io.Writer) error { return write(w, shown, r.rows, fields) }})
+	}
+	if o.points != nil {
+		probed := o.points.read(r)
+		pending = append(pending, table{o.probeOut, probed.write})
+		j.noteTable(probed)
+	}
+	pending = append(pending, r.tables...)
+	if err := j.saveFiles(ctx, pending); err != nil {
+		return err
+	}
+	if len(o.out) == 0 {
+		if err := j.print(ctx, func(w io.Writer) error { return fieldfile.WriteCSV(w, shown, r.rows, fields) }); err != nil {
+			return err
+		}
+	}
+	return o.saveSummary(ctx, j)
+}
+
+// saveSummary writes --summary, if it was asked for, with the last stage in it.
+func (o *outputFlags) saveSummary(ctx context.Context, j *job) error {
+	j.clock.stop()
+	if o.summary == "" {
+		return nil
+	}
+	return j.saveFiles(ctx, []table{{o.summary, func(w io.Writer) error { return j.summary.write(w, j.clock) }}})
+}
+
+// saveFiles puts files in place, one after the other.
+func (j *job) saveFiles(ctx context.Context, files []table) error {
+	j.saving.Lock()
+	defer j.saving.Unlock()
+	for _, f := range files {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		err := fieldfile.Replace(f.name, func(w io.Writer) error { return f.write(&ctxWriter{ctx, w}) })
+		if err != nil {
+			return fmt.Errorf("writing %s: %w", f.name, plain(err))
+		}
+	}
+	return nil
+}
+
+// print writes to standard output. The lock is not held: a reader that has stalled
+// must not keep an interrupt waiting.
+func (j *job) print(ctx context.Context, write func(io.Writer) error) error {
+	w := bufio.NewWriterSize(&ctxWriter{ctx, j.std.Out}, 1<<16)
+	if err := write(w); err != nil {
+		return fmt.Errorf("writing to standard output: %w", err)
+	}
+	if err := w.Flush(); err != nil {
+		return fmt.Errorf("writing to standard output: %w", err)
+	}
+	return nil
+}
+
+// A ctxWriter fails once its context has ended, which makes any writer stop.
+type ctxWriter struct {
+	ctx context.Context
+	w   io.Writer
+}
+
+func (c *ctxWriter) Write(b []byte) (int, error) {
+	if err := c.ctx.Err(); err != nil {
+		return 0, err
+	}
+	return c.w.Write(b)
+}
