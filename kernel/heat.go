@@ -223,7 +223,7 @@ func (f *flow) judge(i int, t float64, opt HeatOptions) {
 	r.Totals[i] = s.heatOf(u)
 	r.BalanceErrors[i] = math.Abs(r.Totals[i]-f.total) / f.total
 	if opt.Stepper == Krylov && r.ErrorEstimates[i] > opt.Tolerance {
-		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: the error in time is estimated at %.2g of the largest value, above the tolerance %g; rounding allows no better", t, r.ErrorEstimates[i], opt.Tolerance))
+		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: the error in time is estimated at %.2g of the largest value, above the tolerance %g: rounding allows no better, with triangles this thin or a tolerance this low", t, r.ErrorEstimates[i], opt.Tolerance))
 	}
 	if floor := -max(opt.Tolerance, 1e-12) * largest; lowest < floor {
 		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: values fall to %.3g (largest %.3g): the mass matrix or a negative edge weight does not keep signs", t, lowest, largest))

@@ -190,6 +190,56 @@ func TestDiscreteTorusKernel(t *testing.T) {
 	}
 }
 
+// ringKernel is the kernel of n points around a ring of length a with three-point
+// differences: Σ exp(-4t/h² sin²(πk/n)) cos(2πik/n) / a.
+func ringKernel(a float64, n int, t float64) []float64 {
+	out := make([]float64, n)
+	h := a / float64(n)
+	for i := range n {
+		for k := range n {
+			sin := math.Sin(math.Pi * float64(k) / float64(n))
+			out[i] += math.Exp(-4*t/h*sin/h*sin) * math.Cos(2*math.Pi*float64(i*k%n)/float64(n)) / a
+		}
+	}
+	return out
+}
+
+// A torus of thin cells, up to 1:1e6: its kernel is the product of two rings' (Fourier),
+// so that the truth is known where dense eigenvalues are lost in rounding. Estimates
+// hold even where the thinness, not the tolerance, decides the error.
+func TestEstimateHoldsOnThinCells(t *testing.T) {
+	const n, m = 40, 32
+	for _, b := range []float64{1, 1e-2, 1e-4, 1e-6} {
+		s, err := newSolver(context.Background(), nil, torusGrid(1, b, n, m), Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for e := -10; e <= 4; e += 2 {
+			time := math.Pow(10, float64(e))
+			x, y := ringKernel(1, n, time), ringKernel(b, m, time)
+			for _, tolerance := range []float64{1e-8, 1e-12} {
+				r, err := s.HeatKernels(context.Background(), at(n*m, 0), []float64{time}, HeatOptions{Tolerance: tolerance})
+				if err != nil {
+					t.Fatal(err)
+				}
+				worst := 0.0
+				for i := range n {
+					for j := range m {
+						worst = max(worst, math.Abs(x[i]*y[j]-r.Fields[0][i*m+j]))
+					}
+				}
+				worst /= x[0] * y[0]
+				if worst > r.ErrorEstimates[0]+1e-13 { // the Fourier sums' rounding
+					t.Errorf("b=%g t=%g tolerance %g: error %.3g, estimate %.3g", b, time, tolerance, worst, r.ErrorEstimates[0])
+				}
+				if b >= 1e-2 && r.ErrorEstimates[0] > tolerance && tolerance == 1e-8 {
+					t.Errorf("b=%g t=%g: estimate %.3g", b, time, r.ErrorEstimates[0])
+				}
+			}
+		}
+	}
+}
+
 // denseKernel is exp(-tA) M⁻¹ load by a dense eigen-decomposition (gonum).
 type denseKernel struct {
 	root   []float64 // square roots of the masses
