@@ -33,3 +33,24 @@ func Supply(t, shift float64) Function {
 		return -math.Expm1(-tau*w) / (w * z) * shift
 	}
 }
+
+// HeatTotal is f(x) = (1 - exp(-t x))/x, the integral of Heat over the time from 0 to
+// t; it is the same function as Supply.
+func HeatTotal(t, shift float64) Function { return Supply(t, shift) }
+
+// SupplyTotal is f(x) = (t - (1 - exp(-t x))/x)/x, the integral of Supply.
+func SupplyTotal(t, shift float64) Function {
+	return func(z float64) float64 {
+		if z <= 0 {
+			return t * shift
+		}
+		s := t / shift * (1 - z) / z // t x
+		var phi float64              // (s - 1 + exp(-s))/s²
+		if s < 0.05 {
+			phi = 1.0/2 - s*(1.0/6-s*(1.0/24-s*(1.0/120-s*(1.0/720-s*(1.0/5040-s/40320)))))
+		} else {
+			phi = (s + math.Expm1(-s)) / s / s
+		}
+		return t * t * phi / z
+	}
+}

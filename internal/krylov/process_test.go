@@ -151,16 +151,30 @@ func TestEstimateHolds(t *testing.T) {
 				}{
 					{"heat", Heat(time, shift), func(x float64) float64 { return math.Exp(-time * x) }},
 					{"supply", Supply(time, shift), func(x float64) float64 { return -math.Expm1(-time*x) / x }},
+					{"supply total", SupplyTotal(time, shift), func(x float64) float64 {
+						if time*x > 1 {
+							return (time + math.Expm1(-time*x)/x) / x
+						}
+						sum, term := 0.0, time*time/2 // t² Σ (-tx)^k / (k+2)!
+						for k := 3.0; k < 25; k++ {
+							sum += term
+							term *= -time * x / k
+						}
+						return sum
+					}},
 				}
 				for _, tc := range cases {
 					want := p.apply(tc.f, load)
 					// Errors are measured against the whole result, which includes the
 					// constant part that the process leaves out.
 					scale := largest(want)
-					if tc.name == "heat" {
+					switch tc.name {
+					case "heat":
 						scale += 1 / sum(p.mass)
-					} else {
+					case "supply":
 						scale += time / sum(p.mass)
+					default:
+						scale += time * time / 2 / sum(p.mass)
 					}
 					q := NewProcess(pencil, load)
 					reached, widest := 0, 1.0
