@@ -142,10 +142,13 @@ func selectEntry(e []entry, k, axis int) {
 
 // gap2 is the square of the distance from p to the node's box, 0 inside.
 func (t *boxTree) gap2(node int, p *[3]float64) float64 {
-	b := t.boxes[6*node : 6*node+6 : 6*node+6]
-	x := max(b[0]-p[0], p[0]-b[3], 0)
-	y := max(b[1]-p[1], p[1]-b[4], 0)
-	z := max(b[2]-p[2], p[2]-b[5], 0)
+	return gap2(p, (*[3]float64)(t.boxes[6*node:]), (*[3]float64)(t.boxes[6*node+3:]))
+}
+
+func gap2(p, lo, hi *[3]float64) float64 {
+	x := max(lo[0]-p[0], p[0]-hi[0], 0)
+	y := max(lo[1]-p[1], p[1]-hi[1], 0)
+	z := max(lo[2]-p[2], p[2]-hi[2], 0)
 	return x*x + y*y + z*z
 }
 

@@ -2,47 +2,52 @@ package mesh
 
 import (
 	"math"
-	"slices"
+	"sync"
+	"sync/atomic"
 )
 
-// A Locator finds the point of a mesh that is nearest to a place in space. It holds
-// a tree of boxes around the triangles that have an area. It may serve several
-// goroutines at once.
+// A Locator finds the point of a mesh that is nearest to a place in space. The first
+// few places are looked up by going through all triangles, which takes less time than
+// building the tree of boxes that serves many. It may serve several goroutines at once.
 type Locator struct {
 	m     *Mesh
-	faces []int32 // of tree item
+	faces []int32 // the triangles with an area
+	slack float64 // what rounding may add to a distance
+	asked atomic.Int32
+	build sync.Once
 	tree  *boxTree
 }
 
-// NewLocator builds the tree. O(n log n): 0.4 s for 1.3 million triangles. The mesh
-// must have a triangle with an area.
+// scans is how many places are looked up without the tree: building it takes as long
+// as 50 scans (BenchmarkNewLocator, BenchmarkScan; 1.3 million triangles).
+const scans = 32
+
+// NewLocator prepares for m, which must have a triangle with an area. O(n); the tree,
+// once it is needed, O(n log n).
 func NewLocator(m *Mesh) *Locator {
-	l := &Locator{m: m}
+	l := &Locator{m: m, faces: make([]int32, 0, m.NumTriangles())}
 	t := m.Triangles
 	for f := range int32(m.NumTriangles()) {
 		if hasArea(m.Positions, t[3*f], t[3*f+1], t[3*f+2]) {
 			l.faces = append(l.faces, f)
 		}
 	}
-	l.faces = slices.Clip(l.faces)
-	l.tree = newBoxTree(len(l.faces), func(i int32) (lo, hi [3]float64) {
-		f := l.faces[i]
-		lo, hi = emptyBox()
-		for _, v := range t[3*f : 3*f+3] {
-			for axis, x := range m.Positions[3*v : 3*v+3] {
-				lo[axis], hi[axis] = min(lo[axis], x), max(hi[axis], x)
-			}
-		}
-		return lo, hi
-	})
+	largest := 0.0
+	for _, x := range m.Positions {
+		largest = max(largest, math.Abs(x))
+	}
+	l.slack = 16 * 0x1p-52 * largest
 	return l
 }
+
+// Triangles is the number of triangles that the Locator looks at: those with an area.
+func (l *Locator) Triangles() int { return len(l.faces) }
 
 // Nearest gives the point of the surface nearest to p and how far off p lies. The
 // point is exact to rounding, also on slivers; of several equally near ones it is on the
 // triangle of the least number. Weights at a vertex or on an edge are exactly 1 and
-// 0, or 0. Some microseconds for a place near the surface. It panics if p is not finite
-// or no triangle of the mesh has an area.
+// 0, or 0. Some microseconds for a place near the surface, once there have been a few.
+// It panics if p is not finite or no triangle of the mesh has an area.
 func (l *Locator) Nearest(p [3]float64) (at Point, gap float64) {
 	if len(l.faces) == 0 {
 		panic("mesh: Nearest: no triangle of the mesh has an area")
@@ -54,47 +59,103 @@ func (l *Locator) Nearest(p [3]float64) (at Point, gap float64) {
 		}
 		p[axis] = max(-farAway, min(farAway, x))
 	}
+	s := search{m: l.m, p: p, slack: l.slack, best: math.Inf(1), limit: math.Inf(1)}
+	if l.asked.Load() < scans {
+		l.asked.Add(1)
+		s.scan(l.faces)
+	} else {
+		l.build.Do(func() {
+			l.tree = newBoxTree(len(l.faces), func(i int32) (lo, hi [3]float64) { return l.m.bounds(l.faces[i]) })
+		})
+		s.descend(l.tree, l.faces)
+	}
+	if p != asked { // farther than can be squared
+		d := minus3(asked, l.m.Position(s.at))
+		return s.at, math.Hypot(math.Hypot(d[0], d[1]), d[2])
+	}
+	return s.at, math.Sqrt(s.best)
+}
+
+// farAway is as far as distances can be squared; parts are smaller (RangeError).
+const farAway = 1e150
+
+func (m *Mesh) bounds(f int32) (lo, hi [3]float64) {
+	a, b, c := point3(m.Positions, m.Triangles[3*f]), point3(m.Positions, m.Triangles[3*f+1]), point3(m.Positions, m.Triangles[3*f+2])
+	for k := range 3 {
+		lo[k], hi[k] = min(a[k], b[k], c[k]), max(a[k], b[k], c[k])
+	}
+	return lo, hi
+}
+
+// search is one place's way through the triangles. A box is passed over only if it is
+// farther than the best so far by more than rounding could pretend: then every way through
+// them ends at the same point.
+type search struct {
+	m     *Mesh
+	p     [3]float64
+	slack float64
+	at    Point
+	best  float64 // distance squared
+	limit float64 // the same with the slack on it
+}
+
+func (s *search) try(f int32) {
+	w, d2 := s.m.nearestOn(f, s.p)
+	if d2 < s.best || d2 == s.best && f < s.at.Triangle {
+		s.best, s.at = d2, Point{Triangle: f, Weights: w}
+		reach := math.Sqrt(d2) + s.slack
+		s.limit = reach * reach * (1 + 0x1p-48)
+	}
+}
+
+// scan goes through all triangles, by their boxes first.
+func (s *search) scan(faces []int32) {
+	t, x := s.m.Triangles, s.m.Positions
+	for _, f := range faces {
+		a, b, c := t[3*f], t[3*f+1], t[3*f+2]
+		sum := 0.0
+		for axis, p := range s.p {
+			u, v, w := x[int(3*a)+axis], x[int(3*b)+axis], x[int(3*c)+axis]
+			if off := max(min(u, v, w)-p, p-max(u, v, w)); off > 0 {
+				if sum += off * off; sum > s.limit {
+					break
+				}
+			}
+		}
+		if sum <= s.limit {
+			s.try(f)
+		}
+	}
+}
+
+func (s *search) descend(t *boxTree, faces []int32) {
 	type visit struct {
 		node, from, to int32
 		gap2           float64
 	}
 	var room [64]visit // twice the depth of a tree of 2^31 items
-	stack := append(room[:0], visit{0, 0, int32(len(l.faces)), l.tree.gap2(0, &p)})
-	best := math.Inf(1)
-	at.Triangle = -1
+	stack := append(room[:0], visit{0, 0, int32(len(t.items)), t.gap2(0, &s.p)})
 	for len(stack) > 0 {
 		v := stack[len(stack)-1]
 		stack = stack[:len(stack)-1]
-		if v.gap2 > best {
+		if v.gap2 > s.limit {
 			continue
 		}
 		if v.to-v.from <= leafItems {
-			for _, i := range l.tree.items[v.from:v.to] {
-				f := l.faces[i]
-				w, d2 := l.m.nearestOn(f, p)
-				if d2 < best || d2 == best && f < at.Triangle {
-					best, at = d2, Point{Triangle: f, Weights: w}
-				}
+			for _, i := range t.items[v.from:v.to] {
+				s.try(faces[i])
 			}
 			continue
 		}
 		mid := int32((int(v.from) + int(v.to)) / 2)
-		near := visit{2*v.node + 1, v.from, mid, l.tree.gap2(int(2*v.node+1), &p)}
-		far := visit{2*v.node + 2, mid, v.to, l.tree.gap2(int(2*v.node+2), &p)}
+		near := visit{2*v.node + 1, v.from, mid, t.gap2(int(2*v.node+1), &s.p)}
+		far := visit{2*v.node + 2, mid, v.to, t.gap2(int(2*v.node+2), &s.p)}
 		if far.gap2 < near.gap2 {
 			near, far = far, near
 		}
 		stack = append(stack, far, near)
 	}
-	if p != asked { // farther than can be squared
-		d := minus3(asked, l.m.Position(at))
-		return at, math.Hypot(math.Hypot(d[0], d[1]), d[2])
-	}
-	return at, math.Sqrt(best)
 }
-
-// farAway is as far as distances can be squared; parts are smaller (RangeError).
-const farAway = 1e150
 
 // nearestOn gives the weights of the point of triangle f nearest to p, and the
 // distance squared. The triangle is measured from its longest edge, along it and
@@ -160,6 +221,3 @@ func (m *Mesh) nearestOn(f int32, p [3]float64) (w [3]float64, d2 float64) {
 	}
 	return w, d2
 }
-
-// Triangles is the number of triangles that a Locator looks at: those with an area.
-func (l *Locator) Triangles() int { return len(l.faces) }

@@ -150,15 +150,37 @@ func TestNearestFarAway(t *testing.T) {
 	}
 }
 
+// scanned is how many places a Locator looks up before it builds its tree.
+const scanned = 32
+
 func BenchmarkNewLocator(b *testing.B) {
 	m := meshtest.Icosphere(8, 0.2, 1)
 	for b.Loop() {
-		mesh.NewLocator(m)
+		l := mesh.NewLocator(m)
+		b.StopTimer()
+		for range scanned {
+			l.Nearest([3]float64{2, 0, 0})
+		}
+		b.StartTimer()
+		l.Nearest([3]float64{2, 0, 0})
+	}
+}
+
+func BenchmarkScan(b *testing.B) {
+	m := meshtest.Icosphere(8, 0.2, 1)
+	for b.Loop() {
+		b.StopTimer()
+		l := mesh.NewLocator(m)
+		b.StartTimer()
+		l.Nearest([3]float64{1, 0.5, 0})
 	}
 }
 
 func BenchmarkNearest(b *testing.B) {
 	l := mesh.NewLocator(meshtest.Icosphere(8, 0.2, 1))
+	for range scanned + 1 {
+		l.Nearest([3]float64{2, 0, 0})
+	}
 	rng := rand.New(rand.NewPCG(1, 2))
 	for b.Loop() {
 		x, y, z := rng.NormFloat64(), rng.NormFloat64(), rng.NormFloat64()
