@@ -26,15 +26,7 @@ func bestShift(tolerance float64) float64 { return max(4, -1.7*math.Log10(tolera
 
 // krylov fills in the fields from Krylov spaces, one for each group of times.
 func (f *flow) krylov(ctx context.Context, tolerance float64) error {
-	var groups [][]int
-	for _, i := range f.order {
-		last := len(groups) - 1
-		if last < 0 || f.reach[i] > groupRatio*f.reach[groups[last][0]] {
-			groups = append(groups, nil)
-			last++
-		}
-		groups[last] = append(groups[last], i)
-	}
+	groups := groupTimes(f.order, f.reach)
 	for len(groups) > 0 {
 		group := groups[0]
 		groups = groups[1:]
@@ -42,13 +34,7 @@ func (f *flow) krylov(ctx context.Context, tolerance float64) error {
 		if err != nil {
 			return err
 		}
-		switch half := len(left) / 2; {
-		case len(left) == 0:
-		case len(left) < len(group) || half == 0:
-			groups = append([][]int{left}, groups...)
-		default:
-			groups = append([][]int{left[:half], left[half:]}, groups...)
-		}
+		groups = append(regroup(group, left), groups...)
 	}
 	return nil
 }
