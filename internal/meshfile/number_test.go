@@ -72,7 +72,7 @@ func TestWordsThatAreNoNumbers(t *testing.T) {
 }
 
 func textSource(text string) *source {
-	s := newSource(context.Background(), "test", strings.NewReader(text), 1<<10)
+	s := newSource(context.Background(), "test", strings.NewReader(text), make([]byte, 1<<10))
 	s.line = 1
 	return s
 }
@@ -82,7 +82,7 @@ func TestWordsAcrossBuffers(t *testing.T) {
 	const text = "one two\r\n\r\nthree\\\r\n four # not this\rfive\\six \\\nseven"
 	want := "1:one 1:two 3:three 4:four 5:five\\six 6:seven"
 	for size := 12; size < 60; size++ {
-		s := newSource(context.Background(), "test", strings.NewReader(text), size)
+		s := newSource(context.Background(), "test", strings.NewReader(text), make([]byte, size))
 		s.line, s.continues = 1, true
 		var got []string
 		for w := s.nextWord(); len(w) > 0; w = s.nextWord() {

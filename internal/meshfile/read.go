@@ -55,10 +55,14 @@ func Read(ctx context.Context, r io.Reader, name, format string, want ...string)
 	if sized, ok := r.(interface{ Size() int64 }); ok {
 		size = sized.Size()
 	}
-	s := newSource(ctx, name, r, bufferSize)
+	buffer := buffers.Get().(*[bufferSize]byte)
+	defer buffers.Put(buffer)
+	s := newSource(ctx, name, r, buffer[:])
 	if s.ensure(2) && s.buf[0] == 0x1f && s.buf[1] == 0x8b { // RFC 1952, section 2.3.1
 		size = 0
-		s = newSource(ctx, name, &unzipper{in: s}, bufferSize)
+		content := buffers.Get().(*[bufferSize]byte)
+		defer buffers.Put(content)
+		s = newSource(ctx, name, &unzipper{in: s}, content[:])
 	}
 	found, err := sniff(s, format)
 	if err != nil {

@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"sync"
 )
 
 // bufferSize is one read. Larger did not read faster (BenchmarkBinarySTL: 256 KiB
@@ -33,9 +34,12 @@ type source struct {
 	got       string // what stood where number, integer or word failed
 }
 
-func newSource(ctx context.Context, file string, r io.Reader, size int) *source {
-	return &source{ctx: ctx, file: file, r: r, buf: make([]byte, size)}
+func newSource(ctx context.Context, file string, r io.Reader, buffer []byte) *source {
+	return &source{ctx: ctx, file: file, r: r, buf: buffer}
 }
+
+// buffers keeps buffers from one file to the next, for runs over thousands of parts.
+var buffers = sync.Pool{New: func() any { return new([bufferSize]byte) }}
 
 // fill reads more behind what is unread, and tells whether there was any.
 func (s *source) fill() bool {
