@@ -472,7 +472,7 @@ func TestSteppersAgree(t *testing.T) {
 // share; a vertex in no triangle has no value. Nothing else must come out of it.
 func TestComponents(t *testing.T) {
 	one, two := meshtest.Icosphere(2, 0, 0), meshtest.Plate(3, 2, 6, 5, 0.1, 1)
-	m := join(one, two, meshtest.Tetrahedron(1))
+	m := meshtest.Join(one, two, meshtest.Tetrahedron(1))
 	m.Positions = append(m.Positions, 9, 9, 9) // a vertex in no triangle
 	s := solverFor(t, m, Options{})
 	n1, n2 := one.NumVertices(), two.NumVertices()
@@ -502,18 +502,6 @@ func TestComponents(t *testing.T) {
 			t.Errorf("%s: plate at t=1000: %g, want 0.125", stepper, got)
 		}
 	}
-}
-
-func join(parts ...*mesh.Mesh) *mesh.Mesh {
-	all := &mesh.Mesh{}
-	for _, p := range parts {
-		from := int32(all.NumVertices())
-		all.Positions = append(all.Positions, p.Positions...)
-		for _, v := range p.Triangles {
-			all.Triangles = append(all.Triangles, from+v)
-		}
-	}
-	return all
 }
 
 // K(t, x, y) = K(t, y, x), and scaling lengths by c and times by c² scales values by
@@ -654,7 +642,7 @@ func TestFactorsAreKept(t *testing.T) {
 
 // The pinned factor solves L x = b exactly: L applied to the answer gives b back.
 func TestPinnedFactor(t *testing.T) {
-	s := solverFor(t, join(meshtest.Icosphere(2, 0, 0), meshtest.Plate(1, 1, 5, 5, 0, 0)), Options{})
+	s := solverFor(t, meshtest.Join(meshtest.Icosphere(2, 0, 0), meshtest.Plate(1, 1, 5, 5, 0, 0)), Options{})
 	f, pins, err := s.factorPinned(context.Background())
 	if err != nil {
 		t.Fatal(err)
