@@ -2,7 +2,9 @@ package sparse
 
 import (
 	"context"
+	"runtime"
 	"slices"
+	"sync"
 )
 
 // Options steers an analysis.
@@ -19,169 +21,135 @@ type Stats struct {
 	Flops          float64 // sum of the squared column counts
 	Supernodes     int
 	StoredValues   int64 // float64 values that a Factor keeps, padding included
-	PeakBytes      int64 // what one Factor takes while it is being computed
+	PeakBytes      int64 // what the analysis and one Factor take while it is being computed
 }
 
 // An Analysis is all that can be known of a factorisation from the pattern alone.
 // It is immutable and may serve any number of factors and goroutines.
 type Analysis struct {
-	pattern *Pattern
-	perm    []int32 // perm[k] is the row that is eliminated k-th
-	inverse []int32
-	parent  []int32
-	colPtr  []int64
-	stats   Stats
-	opt     Options
+	pattern    *Pattern
+	perm       []int32 // perm[k] is the row that is eliminated k-th
+	inverse    []int32
+	nodes      []supernode // in postorder
+	rows       []int32     // below the columns of each supernode, ascending, in the order of elimination
+	relative   []int32     // the same rows as places in the parent's front
+	plan       *plan
+	stats      Stats
+	workspaces sync.Pool // of *workspace
+	vectors    sync.Pool // of *vectors
 }
 
 // Stats returns counts of the factor to come.
 func (a *Analysis) Stats() Stats { return a.stats }
 
 // Analyze chooses an elimination order for matrices on p and works out the factor's structure.
-// p must not change afterwards.
+// p must not change afterwards. The error is a *SizeError or ctx.Err().
 func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 	n := p.Dim()
-	a := &Analysis{pattern: p, opt: opt}
-	a.perm = order(p)
-	a.inverse = make([]int32, n)
-	for k, v := range a.perm {
-		a.inverse[v] = int32(k)
+	workers := opt.Workers
+	if workers <= 0 {
+		workers = runtime.GOMAXPROCS(0)
 	}
-	a.parent = make([]int32, n)
-	count := make([]int32, n)
-	ancestor := make([]int32, n)
-	mark := make([]int32, n)
-	for k := range n {
-		a.parent[k], ancestor[k], mark[k], count[k] = -1, -1, -1, 1
+	perm, err := dissect(ctx, p, opt.Coords, workers)
+	if err != nil {
+		return nil, err
 	}
-	for k := range n {
-		mark[k] = int32(k)
-		v := a.perm[k]
-		for _, w := range p.Adj[p.Ptr[v]:p.Ptr[v+1]] {
-			i := a.inverse[w]
-			if int(i) >= k {
-				continue
-			}
-			for j := i; j != -1 && int(j) < k; {
-				next := ancestor[j]
-				ancestor[j] = int32(k)
-				if next == -1 {
-					a.parent[j] = int32(k)
-				}
-				j = next
-			}
-		}
-		for _, w := range p.Adj[p.Ptr[v]:p.Ptr[v+1]] {
-			i := a.inverse[w]
-			if int(i) >= k {
-				continue
-			}
-			for j := i; mark[j] != int32(k); j = a.parent[j] {
-				mark[j] = int32(k)
-				count[j]++
-			}
-		}
-		if k&4095 == 0 && ctx.Err() != nil {
-			return nil, ctx.Err()
-		}
+	inverse := invert(perm)
+	parent := eliminationTree(p, perm, inverse)
+	post := postorder(parent)
+	count := columnCounts(p, perm, inverse, parent, post)
+	if err := ctx.Err(); err != nil {
+		return nil, err
 	}
-	a.colPtr = make([]int64, n+1)
-	a.stats = Stats{Rows: n, Supernodes: n}
-	for k, c := range count {
-		a.colPtr[k+1] = a.colPtr[k] + int64(c)
+	a := &Analysis{pattern: p, perm: perm}
+	a.stats = Stats{Rows: n}
+	for _, c := range count {
 		a.stats.FactorNonzeros += int64(c)
 		a.stats.Flops += float64(c) * float64(c)
 	}
-	a.stats.StoredValues = a.stats.FactorNonzeros
-	a.stats.PeakBytes = 12 * a.stats.FactorNonzeros
+	var order []int32
+	a.nodes, order = supernodes(parent, post, count)
+	a.perm = make([]int32, n)
+	for k, j := range order {
+		a.perm[k] = perm[j]
+	}
+	a.inverse = invert(a.perm)
+	a.stats.Supernodes = len(a.nodes)
+	var below int64
+	for s := range a.nodes {
+		node := &a.nodes[s]
+		node.rows, node.values = below, a.stats.StoredValues
+		below += int64(node.m - node.w)
+		a.stats.StoredValues += factorSize(int64(node.w), int64(node.m))
+	}
+	a.plan = makePlan(a.nodes, workers)
+	a.stats.PeakBytes = 8*(a.stats.StoredValues+a.plan.values()) + 8*below + 16*int64(n)
 	if opt.MaxBytes > 0 && a.stats.PeakBytes > opt.MaxBytes {
 		return nil, &SizeError{n, a.stats.PeakBytes, opt.MaxBytes}
 	}
-	return a, nil
+	a.rows = make([]int32, below)
+	a.relative = make([]int32, below)
+	a.structure()
+	return a, ctx.Err()
 }
 
-// order is nested dissection by the levels of a breadth-first search.
-func order(p *Pattern) []int32 {
-	n := p.Dim()
-	perm := make([]int32, 0, n)
-	part := make([]int32, n) // which piece a row lies in
-	next := int32(1)
-	all := make([]int32, n)
-	for i := range all {
-		all[i] = int32(i)
+func invert(perm []int32) (inverse []int32) {
+	inverse = make([]int32, len(perm))
+	for k, v := range perm {
+		inverse[v] = int32(k)
 	}
-	level := make([]int32, n)
-	search := func(start, piece int32) []int32 {
-		queue := []int32{start}
-		level[start] = 0
-		part[start] = -piece
-		for h := 0; h < len(queue); h++ {
-			v := queue[h]
-			for _, w := range p.Adj[p.Ptr[v]:p.Ptr[v+1]] {
-				if part[w] == piece {
-					part[w] = -piece
-					level[w] = level[v] + 1
-					queue = append(queue, w)
+	return inverse
+}
+
+// structure fills in the rows of each supernode: the union of its columns' entries in the matrix and
+// of its children's rows.
+func (a *Analysis) structure() {
+	mark := make([]int32, len(a.perm)) // 1 + the supernode that last had the row
+	for s := range a.nodes {
+		node := &a.nodes[s]
+		end := node.first + node.w
+		rows := a.rows[node.rows:node.rows]
+		stamp := int32(s) + 1
+		for _, v := range a.perm[node.first:end] {
+			for _, w := range a.pattern.Adj[a.pattern.Ptr[v]:a.pattern.Ptr[v+1]] {
+				if i := a.inverse[w]; i >= end && mark[i] != stamp {
+					mark[i] = stamp
+					rows = append(rows, i)
 				}
 			}
 		}
-		for _, v := range queue {
-			part[v] = piece
-		}
-		return queue
-	}
-	for i := range part {
-		part[i] = 1
-	}
-	var out []int32 // in reverse: separators first
-	type job struct {
-		rows  []int32
-		piece int32
-	}
-	stack := []job{{all, 1}}
-	for len(stack) > 0 {
-		j := stack[len(stack)-1]
-		stack = stack[:len(stack)-1]
-		if len(j.rows) == 0 {
-			continue
-		}
-		queue := search(j.rows[0], j.piece)
-		if len(queue) < len(j.rows) { // several components: peel one off
-			next++
-			for _, v := range queue {
-				part[v] = next
-			}
-			rest := slices.DeleteFunc(slices.Clone(j.rows), func(v int32) bool { return part[v] == next })
-			stack = append(stack, job{rest, j.piece}, job{queue, next})
-			continue
-		}
-		if len(j.rows) <= 16 {
-			out = append(out, queue...)
-			continue
-		}
-		queue = search(queue[len(queue)-1], j.piece)
-		middle := level[queue[len(queue)/2]]
-		var low, high []int32
-		next++
-		lowPiece := next
-		next++
-		for _, v := range queue {
-			switch {
-			case level[v] < middle:
-				low = append(low, v)
-				part[v] = lowPiece
-			case level[v] > middle:
-				high = append(high, v)
-				part[v] = next
-			default:
-				out = append(out, v)
-				part[v] = 0
+		for c := int32(s) - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
+			for _, i := range a.below(c) {
+				if i >= end && mark[i] != stamp {
+					mark[i] = stamp
+					rows = append(rows, i)
+				}
 			}
 		}
-		stack = append(stack, job{low, lowPiece}, job{high, next})
+		if len(rows) != int(node.m-node.w) {
+			panic("sparse: column counts disagree with the structure: the pattern is not symmetric")
+		}
+		slices.Sort(rows)
+		for c := int32(s) - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
+			relative := a.relative[a.nodes[c].rows:]
+			at := int32(0)
+			for i, r := range a.below(c) {
+				if r < end {
+					relative[i] = r - node.first
+					continue
+				}
+				for rows[at] != r {
+					at++
+				}
+				relative[i] = node.w + at
+			}
+		}
 	}
-	for _, v := range slices.Backward(out) {
-		perm = append(perm, v)
-	}
-	return perm
 }
+
+// below returns the rows of a supernode below its columns.
+func (a *Analysis) below(s int32) []int32 {
+	node := &a.nodes[s]
+	return a.rows[node.rows : node.rows+int64(node.m-node.w)]
+}
+

@@ -1,0 +1,103 @@
+package sparse
+
+import (
+	"slices"
+	"sort"
+)
+
+// assemble fills panels [p0, p1) of the front of supernode s: zeros, the entries of the matrix,
+// then the children's update matrices, last child first.
+func (f *Factor) assemble(fr *front, s int32, ln *lane, p0, p1 int) {
+	a := f.a
+	node := &a.nodes[s]
+	factorPanels := (fr.w + 7) / 8
+	if p0 < factorPanels {
+		from, _ := fr.factorPanel(p0)
+		to := len(fr.l) - slack
+		if p1 < factorPanels {
+			to, _ = fr.factorPanel(p1)
+		}
+		clear(fr.l[from:to])
+		f.scatter(fr, node, 8*p0, min(8*p1, fr.w))
+	}
+	if q := max(p0, fr.w/8); q < p1 && fr.w < fr.m {
+		from, _ := fr.updatePanel(q)
+		to := len(fr.u)
+		if p1 < fr.blocks {
+			to, _ = fr.updatePanel(p1)
+		}
+		clear(fr.u[from:to])
+	}
+	d := a.plan.depth[s]
+	bottom := ln.fill[1-d]
+	for c := s - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
+		child := &a.nodes[c]
+		w, m := int64(child.w), int64(child.m)
+		if w == m {
+			continue
+		}
+		size := updateSize(w, m)
+		var u []float64
+		if slot := a.plan.slot[c]; slot >= 0 {
+			u = f.work.slab[slot : slot+size]
+		} else {
+			bottom -= size
+			u = ln.stack[1-d][bottom : bottom+size]
+		}
+		fr.add(child, u, a.relative[child.rows:child.rows+m-w], 8*p0, 8*p1)
+	}
+}
+
+// scatter adds the entries of the matrix in columns [c0, c1) of the front.
+func (f *Factor) scatter(fr *front, node *supernode, c0, c1 int) {
+	a, m, held := f.a, f.matrix, f.held
+	below := a.rows[node.rows : node.rows+int64(node.m-node.w)]
+	for c := c0; c < c1; c++ {
+		k := node.first + int32(c)
+		v := a.perm[k]
+		array, base, step := fr.column(c)
+		if held != nil && held[v] {
+			array[base+c/8*step+c%8] = 1
+			continue
+		}
+		scale := f.scale[k]
+		array[base+c/8*step+c%8] = m.Diag[v] * scale * scale
+		for q := m.Ptr[v]; q < m.Ptr[v+1]; q++ {
+			w := m.Adj[q]
+			i := a.inverse[w]
+			if i <= k || held != nil && held[w] {
+				continue
+			}
+			r := int(i - node.first)
+			if r >= fr.w {
+				at, found := slices.BinarySearch(below, i)
+				if !found {
+					panic("sparse: Factorize: matrix has an entry outside the pattern that was analysed")
+				}
+				r = fr.w + at
+			}
+			array[base+r/8*step+r%8] += m.Off[q] * scale * f.scale[i]
+		}
+	}
+}
+
+// add adds the child's update matrix u to the columns [c0, c1) of the front; relative[i] is the
+// place in the front of row w+i of the child.
+func (fr *front) add(child *supernode, u []float64, relative []int32, c0, c1 int) {
+	src := front{w: int(child.w), m: int(child.m), blocks: int(child.m+7) / 8, u: u}
+	j0 := sort.Search(len(relative), func(i int) bool { return int(relative[i]) >= c0 })
+	for j := j0; j < len(relative) && int(relative[j]) < c1; j++ {
+		to, toBase, toStep := fr.column(int(relative[j]))
+		_, base, step := src.column(src.w + j)
+		i := j
+		for i < len(relative) {
+			row := src.w + i
+			n := min(8-row%8, len(relative)-i)
+			from := u[base+row/8*step+row%8:][:n]
+			for t, r := range relative[i : i+n] {
+				to[toBase+int(r>>3)*toStep+int(r&7)] += from[t]
+			}
+			i += n
+		}
+	}
+}
