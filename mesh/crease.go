@@ -120,20 +120,19 @@ func (m *Mesh) into(h int32, glued []int32, noise float64) (d [3]float64, ok boo
 	for range most {
 		corner := 3 * (h / 3)
 		p, q, r := point3(x, t[corner]), point3(x, t[corner+1]), point3(x, t[corner+2])
-		longest, length := corner, length3(minus3(q, p))
-		if l := length3(minus3(r, q)); l > length {
-			longest, length = corner+1, l
+		pq, qr, rp := minus3(q, p), minus3(r, q), minus3(p, r)
+		longest, length2 := corner, dot3(pq, pq)
+		if l := dot3(qr, qr); l > length2 {
+			longest, length2 = corner+1, l
 		}
-		if l := length3(minus3(p, r)); l > length {
-			longest, length = corner+2, l
+		if l := dot3(rp, rp); l > length2 {
+			longest, length2 = corner+2, l
 		}
-		if length3(cross3(minus3(q, p), minus3(r, p))) > noise*length {
+		if n := cross3(pq, rp); dot3(n, n) > noise*noise*length2 {
 			e, c := minus3(b, a), minus3(point3(x, t[prev(h)]), a)
-			along := dot3(c, e) / dot3(e, e)
-			for axis := range d {
-				d[axis] = c[axis] - along*e[axis]
-			}
-			return d, dot3(e, e) > 0
+			e2 := dot3(e, e)
+			along := dot3(c, e) / e2
+			return [3]float64{c[0] - along*e[0], c[1] - along*e[1], c[2] - along*e[2]}, e2 > 0
 		}
 		beyond := glued[longest]
 		if longest == h || beyond == longest || glued[beyond] != longest {
