@@ -2,6 +2,7 @@ package cli
 
 import (
 	"encoding/json"
+	"fmt"
 	"io"
 
 	"github.com/spf13/cobra"
@@ -36,7 +37,7 @@ be read.`,
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
 		ctx := cmd.Context()
-		if err := output.prepare(ctx, args[0]); err != nil {
+		if err := output.prepare(args[0]); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])
@@ -46,7 +47,15 @@ be read.`,
 		j.clock.enter("check")
 		report := mesh.Check(part)
 		j.summary.Check = report
-		write := func(w io.Writer) error { return writeReport(w, part, report, &input) }
+		j.summary.Mesh.Components, j.summary.Mesh.Area = report.Components, number(report.Area)
+		write := func(w io.Writer) error {
+			if input.unit != "" {
+				if _, err := fmt.Fprintf(w, "lengths in %s, areas in %[1]s^2\n", input.unit); err != nil {
+					return err
+				}
+			}
+			return report.WriteText(w)
+		}
 		if asJSON {
 			write = func(w io.Writer) error {
 				e := json.NewEncoder(w)
@@ -54,12 +63,10 @@ be read.`,
 				return e.Encode(report)
 			}
 		}
-		if err := j.print(ctx, write); err != nil {
+		if err := j.print(write); err != nil {
 			return err
 		}
 		return output.saveSummary(ctx, j)
 	}
 	return cmd
 }
-
-func writeReport(w io.Writer, part *mesh.Mesh, r *mesh.Report, unit *meshFlags) error { return nil }

@@ -15,6 +15,8 @@ import (
 	"syscall"
 
 	"github.com/spf13/cobra"
+
+	"heatskin/internal/fieldfile"
 )
 
 // Streams are what a run reads from and writes to: a mesh named "-", a table where
@@ -26,7 +28,7 @@ type Streams struct {
 
 // Main runs the program with the arguments that follow its name, and returns its
 // exit status. An error becomes one line on std.Err. On an interrupt it returns
-// without waiting for the computation, but not before a file being saved is gone.
+// without waiting for the computation; what was half written is gone by then.
 func Main(args []string, std Streams) int {
 	ctx, stop := signal.NotifyContext(context.Background(), os.Interrupt, syscall.SIGTERM)
 	defer stop()
@@ -40,7 +42,7 @@ func Main(args []string, std Streams) int {
 	select {
 	case err = <-done:
 	case <-ctx.Done():
-		j.saving.Lock() // never unlocked: nothing may be saved from here on
+		fieldfile.RemovePending()
 		select {
 		case err = <-done:
 		default:

@@ -1,9 +1,6 @@
 package cli
 
 import (
-	"context"
-	"fmt"
-	"io"
 	"math"
 	"strconv"
 
@@ -22,6 +19,11 @@ type distanceSummary struct {
 	LargestDistance    number `json:"largest_distance"`
 	Reached            int    `json:"reached_vertices"`
 }
+
+const (
+	methodHeat  = "heat"
+	methodExact = "exact"
+)
 
 // newDistance is `heatskin distance`.
 func newDistance(j *job) *cobra.Command {
@@ -45,15 +47,17 @@ measured along the triangles, whatever their shape. A vertex that no source can 
 from has the distance inf.`,
 		Example: `  heatskin distance cap.stl --at-boundary 1 --out creep.ply --out creep.csv
   heatskin distance cap.stl --at-point 40,0,53 --probe sensors.csv --probe-out readings.csv --out field.csv
+  heatskin distance cap.stl --at-vertex 12 --method exact > exact.csv
   heatskin distance cap.stl --at-file pins.csv --matrix between-pins.csv --each --out pins.ply
   zcat part.ply.gz | heatskin distance - --format ply --at-crease 60 > to-edges.csv`,
 		Args: oneMesh,
 	}
 	flags := cmd.Flags()
 	source.register(flags, "at")
-	oneOfVar(flags, &method, "method", "heat", []string{"heat"}, "`heat`: fast, with a front that keeps its curvature")
-	flags.BoolVar(&opts.Smooth, "smooth", false, "a field without kinks where fronts meet; less accurate")
-	positiveVar(flags, &opts.Smoothing, "smoothing", 1, "scale the time of the heat solve by `F`")
+	oneOfVar(flags, &method, "method", methodHeat, []string{methodHeat, methodExact},
+		"`heat|exact`: fast, or shortest paths over the flat triangles without any discretisation error")
+	flags.BoolVar(&opts.Smooth, "smooth", false, "heat: a field without kinks where fronts meet; less accurate")
+	positiveVar(flags, &opts.Smoothing, "smoothing", 1, "heat: scale the time of the heat solve by `F`")
 	flags.BoolVar(&each, "each", false, "one column for each source (distance_0, distance_1...) in place of their union")
 	flags.StringVar(&matrix, "matrix", "", "distances between all sources, as `FILE.csv` with the columns from,to,distance")
 	output.register(flags)
@@ -65,10 +69,13 @@ from has the distance inf.`,
 		if err := source.want("distance"); err != nil {
 			return err
 		}
+		if method == methodExact && (flags.Changed("smooth") || flags.Changed("smoothing")) {
+			return usagef("--smooth and --smoothing belong to --method heat")
+		}
 		if matrix != "" {
 			output.tables = append(output.tables, matrix)
 		}
-		if err := output.prepare(ctx, args[0]); err != nil {
+		if err := output.prepare(args[0]); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])
@@ -79,142 +86,75 @@ from has the distance inf.`,
 		if err != nil {
 			return err
 		}
-		d := &distances{ground: g, options: opts}
-		var fields []fieldfile.Column
+		var measure ruler
+		if method == methodExact {
+			measure = newExactRuler(j, g)
+		} else if measure, err = newHeatRuler(ctx, j, g, opts); err != nil {
+			return err
+		}
+
+		columns := []string{"distance"}
+		sources := [][]int{nil}
 		if each {
+			columns, sources = nil, nil
 			for i := range g.data {
-				values, err := d.from(ctx, i)
-				if err != nil {
-					return err
-				}
-				fields = append(fields, fieldfile.Column{Name: "distance_" + strconv.Itoa(i), Values: values})
+				columns = append(columns, "distance_"+strconv.Itoa(i))
+				sources = append(sources, []int{i})
 			}
-		} else {
-			values, err := d.union(ctx)
+		}
+		found := g.result(refine.keep)
+		for i, name := range columns {
+			values, err := measure.field(ctx, sources[i])
 			if err != nil {
 				return err
 			}
-			fields = append(fields, fieldfile.Column{Name: "distance", Values: values})
+			found.fields = append(found.fields, fieldfile.Column{Name: name, Values: values})
 		}
-		found := g.result(fields, refine.keep)
+		if output.points != nil {
+			places := output.points.on(g.part)
+			for i, name := range columns {
+				values, err := measure.at(ctx, sources[i], places)
+				if err != nil {
+					return err
+				}
+				if values != nil {
+					found.probed = append(found.probed, fieldfile.Column{Name: name, Values: values})
+				}
+			}
+		}
 		if matrix != "" {
-			between, err := d.matrix(ctx)
+			between, err := measureMatrix(ctx, measure, len(g.data))
 			if err != nil {
 				return err
 			}
 			found.tables = append(found.tables, table{matrix, between.write})
 		}
-		j.summary.Solves = d.solves
-		j.summary.distanceSummary = summarize(method, fields, found.rows)
-		if far := j.summary.LargestDistance; !math.IsNaN(float64(far)) {
-			j.note("largest distance %s, %d of %d vertices reached", input.length(float64(far)), j.summary.Reached, found.rows)
+
+		j.summary.distanceSummary = summarizeDistance(method, found)
+		if heat, ok := measure.(*heatRuler); ok {
+			j.summary.Solves = heat.solves
+		}
+		if far := float64(j.summary.LargestDistance); !math.IsNaN(far) {
+			j.note("largest distance %s, %d of %d vertices reached", input.length(far), j.summary.Reached, found.shown.NumVertices())
 		}
 		return output.save(ctx, j, found)
 	}
 	return cmd
 }
 
-// distances answers for the sources of a ground, singly and together.
-type distances struct {
-	*ground
-	options kernel.DistanceOptions
-	single  [][]float64 // by source, once asked for
-	solves  int
-}
-
-// union is the distance to the nearest source.
-func (d *distances) union(ctx context.Context) ([]float64, error) {
-	if len(d.data) == 1 {
-		return d.from(ctx, 0)
-	}
-	return d.solve(ctx, nil)
-}
-
-// from is the distance to source i.
-func (d *distances) from(ctx context.Context, i int) ([]float64, error) {
-	if d.single == nil {
-		d.single = make([][]float64, len(d.data))
-	}
-	if d.single[i] == nil {
-		var err error
-		if d.single[i], err = d.solve(ctx, []int{i}); err != nil {
-			return nil, err
-		}
-	}
-	return d.single[i], nil
-}
-
-func (d *distances) solve(ctx context.Context, which []int) ([]float64, error) {
-	found, err := d.solver.Distance(ctx, which, d.options)
-	if err != nil {
-		return nil, solverError(err)
-	}
-	d.solves += found.Solves
-	return found.Distance, nil
-}
-
-// A distanceMatrix holds distances between sources, row by row.
-type distanceMatrix struct {
-	n      int
-	values []float64
-}
-
-// matrix is the distance between every two sources. Seen from either end a line's
-// nearest point may fall between vertices, and the other end then sees it better:
-// hence the lesser of the two, which also makes the matrix symmetric.
-func (d *distances) matrix(ctx context.Context) (*distanceMatrix, error) {
-	m := &distanceMatrix{n: len(d.data), values: make([]float64, len(d.data)*len(d.data))}
-	for i := range d.data {
-		field, err := d.from(ctx, i)
-		if err != nil {
-			return nil, err
-		}
-		for k := range d.data {
-			m.values[i*m.n+k] = d.nearest(field, k)
-		}
-	}
-	for i := range m.n {
-		for k := range i {
-			least := min(m.values[i*m.n+k], m.values[k*m.n+i])
-			m.values[i*m.n+k], m.values[k*m.n+i] = least, least
-		}
-	}
-	return m, nil
-}
-
-// nearest is the least value of field on source k.
-func (d *distances) nearest(field []float64, k int) float64 {
-	if v := d.surface.Site(k); v >= 0 {
-		return field[v]
-	}
-	least := math.Inf(1)
-	for _, edge := range d.data[k].Edges {
-		least = min(least, field[edge[0]], field[edge[1]])
-	}
-	return least
-}
-
-func (m *distanceMatrix) write(w io.Writer) error {
-	if _, err := fmt.Fprintln(w, "from,to,distance"); err != nil {
-		return err
-	}
-	for i, x := range m.values {
-		if _, err := fmt.Fprintf(w, "%d,%d,%s\n", i/m.n, i%m.n, full(x)); err != nil {
-			return err
-		}
-	}
-	return nil
-}
-
-// summarize looks at the rows that are shown.
-func summarize(method string, fields []fieldfile.Column, rows int) *distanceSummary {
+// summarizeDistance looks at the rows that are shown.
+func summarizeDistance(method string, found *result) *distanceSummary {
 	nan := number(math.NaN())
 	s := &distanceSummary{
 		Method:             method,
 		EstimatedMeanError: nan, EstimatedMaxError: nan, ChordError: nan, LargestDistance: nan,
 	}
+	if method == methodExact {
+		s.EstimatedMeanError, s.EstimatedMaxError = 0, 0
+	}
+	rows := found.shown.NumVertices()
 	reached := make([]bool, rows)
-	for _, f := range fields {
+	for _, f := range found.fields {
 		for v, x := range f.Values[:rows] {
 			if !math.IsInf(x, 0) && !math.IsNaN(x) {
 				reached[v] = true

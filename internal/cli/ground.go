@@ -2,10 +2,8 @@ package cli
 
 import (
 	"context"
-	"errors"
 	"math"
 
-	"heatskin/internal/fieldfile"
 	"heatskin/kernel"
 	"heatskin/mesh"
 )
@@ -15,20 +13,21 @@ import (
 const refineBudget = 5_000_000
 
 // A ground is what a command computes on: the mesh as it was read, the mesh with its
-// faces cut as finely as was asked, the sources placed on it, and the solver.
+// faces cut as finely as was asked, the sources placed on it, its intrinsic surface,
+// and for what needs it the heat solver.
 type ground struct {
 	original, part *mesh.Mesh
 	data           []mesh.Datum
 	surface        *mesh.Surface
-	solver         *kernel.Solver
+	solver         *kernel.Solver // after makeSolver
 }
 
 // prepare makes the ground of a command whose mesh has been read.
 func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags, refine *refineFlags, source *sourceFlags) (*ground, error) {
 	g := &ground{original: original, part: original}
+	var err error
 	if refine.maxEdge > 0 && !math.IsInf(refine.maxEdge, 1) {
 		j.clock.enter("refine")
-		var err error
 		if g.part, err = mesh.Refine(ctx, original, refine.maxEdge, refineBudget); err != nil {
 			return nil, refuse(err)
 		}
@@ -38,7 +37,6 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 			input.length(refine.maxEdge), g.part.NumVertices(), g.part.NumTriangles())
 	}
 	j.clock.enter("place")
-	var err error
 	if g.data, err = source.place(ctx, j, original, g.part, input); err != nil {
 		return nil, err
 	}
@@ -46,46 +44,46 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 	if g.surface, err = mesh.NewSurface(g.part); err != nil {
 		return nil, refuse(err)
 	}
+	size := j.summary.Mesh
+	_, size.Components = g.surface.Components()
+	for f := range int32(g.surface.NumFaces()) {
+		size.Area += number(g.surface.Area(f))
+	}
+	return g, nil
+}
+
+// makeSolver puts the sources into the surface's triangulation and prepares to solve
+// for heat on it.
+func (g *ground) makeSolver(ctx context.Context, j *job) error {
 	if err := g.surface.Place(g.data); err != nil {
-		return nil, refuse(err)
+		return refuse(err)
 	}
 	j.clock.enter("flip")
 	g.surface.Delaunay(g.surface.NumFaces())
+	var err error
 	if g.solver, err = kernel.NewSolver(ctx, g.surface, kernel.Options{Progress: j.clock.progress}); err != nil {
-		return nil, solverError(err)
+		return sorted(err)
 	}
 	size := g.solver.Stats()
-	j.summary.Mesh.Components, j.summary.Mesh.Area = size.Components, number(size.Area)
 	j.summary.Matrix = &matrixSummary{
 		Rows:           size.Vertices,
 		Nonzeros:       size.MatrixNonzeros,
 		FactorNonzeros: size.FactorNonzeros,
 		FactorFlops:    size.FactorFlops,
 	}
-	return g, nil
+	return nil
 }
 
-// solverError sorts what a solver met: a mesh or source that does not suit it is
-// refused, anything else is a failure on the way.
-func solverError(err error) error {
-	var (
-		datum *mesh.DatumError
-		empty *mesh.EmptyError
-		size  *mesh.RangeError
-		load  *kernel.LoadError
-	)
-	if errors.As(err, &datum) || errors.As(err, &empty) || errors.As(err, &size) || errors.As(err, &load) {
-		return refuse(err)
-	}
-	return err
-}
-
-// result shows fields over the surface's vertices: on the vertices of the file, or
-// with those that the computation added as well.
-func (g *ground) result(fields []fieldfile.Column, keepRefined bool) *result {
-	r := &result{part: g.part, rows: g.original.NumVertices(), fields: fields}
-	if keepRefined {
-		r.rows, r.extended = g.surface.NumVertices, g.surface.Positions
+// result is for fields on this ground: shown on the mesh of the file, or with the
+// vertices that the computation added as well. Those that lie inside a face of the
+// refined mesh (a source, the foot of a height) are rows without a face.
+func (g *ground) result(keepRefined bool) *result {
+	r := &result{part: g.part, shown: g.original}
+	switch {
+	case keepRefined && g.solver != nil:
+		r.shown = &mesh.Mesh{Positions: g.surface.Positions, Triangles: g.part.Triangles, File: g.part.File}
+	case keepRefined:
+		r.shown = g.part
 	}
 	return r
 }

@@ -4,7 +4,6 @@ import (
 	"fmt"
 	"io"
 	"os"
-	"sync"
 
 	"github.com/spf13/cobra"
 	"golang.org/x/term"
@@ -20,10 +19,6 @@ type job struct {
 	profile profile
 	clock   *clock
 	summary summary
-
-	// saving is held while files are written: whoever takes it knows that no file
-	// is half way.
-	saving sync.Mutex
 }
 
 func newJob(std Streams, args []string) *job {

@@ -112,7 +112,7 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 		if err := step.check(cmd); err != nil {
 			return err
 		}
-		if err := output.prepare(ctx, args[0]); err != nil {
+		if err := output.prepare(args[0]); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])
@@ -123,6 +123,9 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 		if err != nil {
 			return err
 		}
+		if err := g.makeSolver(ctx, j); err != nil {
+			return err
+		}
 		load := g.surface.Load(g.data)
 		heat, err := g.solver.HeatKernels(ctx, load, times.seconds, kernel.HeatOptions{
 			Diffusivity: diffusivity,
@@ -131,18 +134,18 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 			Steps:       step.steps,
 		})
 		if err != nil {
-			return solverError(err)
+			return sorted(err)
 		}
 		for _, text := range heat.Warnings {
 			j.warn(text)
 		}
 		j.summary.Solves = heat.Solves
 		j.summary.kernelSummary = summarizeHeat(times.seconds, heat)
-		var columns []fieldfile.Column
+		found := g.result(refine.keep)
 		for i, name := range times.names("u_t") {
-			columns = append(columns, fieldfile.Column{Name: name, Values: heat.Fields[i]})
+			found.fields = append(found.fields, fieldfile.Column{Name: name, Values: heat.Fields[i]})
 		}
-		return output.save(ctx, j, g.result(columns, refine.keep))
+		return output.save(ctx, j, found)
 	}
 	return cmd
 }

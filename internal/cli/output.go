@@ -3,10 +3,8 @@ package cli
 import (
 	"bufio"
 	"context"
-	"errors"
 	"fmt"
 	"io"
-	"os"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -25,18 +23,17 @@ type outputFlags struct {
 	summary  string
 	tables   []string // further CSV files that the command's own flags name
 
-	points *probeTable // what --probe holds, once read
+	points *probes // what --probe holds, once read
 }
 
-// A result is what a command found: fields over the vertices of the mesh that it
-// computed on, and which of these vertices have a row of their own.
+// A result is what a command found: fields over the vertices that it computed with,
+// and the mesh to show them on.
 type result struct {
-	part     *mesh.Mesh // computed on; its first vertices are those of the file
-	rows     int        // vertices shown, from 0
-	fields   []fieldfile.Column
-	probed   []fieldfile.Column // fields at the probes, if they are not the linear ones
-	tables   []table
-	extended []float64 // positions of all vertices, if the computation added some to part's
+	part   *mesh.Mesh         // computed on
+	shown  *mesh.Mesh         // written; its vertices are the first of the fields
+	fields []fieldfile.Column // by vertex
+	probed []fieldfile.Column // fields at the probes, if they are not the linear ones
+	tables []table
 }
 
 // A table is a further file of a command.
@@ -46,11 +43,13 @@ type table struct {
 }
 
 // fieldFormats are the kinds of file that --out writes, by extension.
-var fieldFormats = map[string]func(io.Writer, *mesh.Mesh, int, []fieldfile.Column) error{
-	".csv": fieldfile.WriteCSV,
-	".ply": func(w io.Writer, m *mesh.Mesh, _ int, fields []fieldfile.Column) error {
-		return fieldfile.WritePLY(w, m, fields)
-	},
+var fieldFormats = map[string]func(io.Writer, *mesh.Mesh, []fieldfile.Column) error{
+	".csv": writeCSV,
+	".ply": fieldfile.WritePLY,
+}
+
+func writeCSV(w io.Writer, m *mesh.Mesh, fields []fieldfile.Column) error {
+	return fieldfile.WriteCSV(w, m, m.NumVertices(), fields)
 }
 
 func extensions() string {
@@ -77,7 +76,7 @@ func (o *outputFlags) registerSummary(flags *pflag.FlagSet) {
 // prepare finds out what would keep the results from being written, before anything
 // long is computed: names of no known kind, two results for one file, a directory
 // that is not there. It also reads the probes.
-func (o *outputFlags) prepare(ctx context.Context, input string) error {
+func (o *outputFlags) prepare(input string) error {
 	for _, name := range o.out {
 		if ext := strings.ToLower(filepath.Ext(name)); fieldFormats[ext] == nil {
 			return usagef("--out %s: want a name that ends in one of %s", name, extensions())
@@ -105,13 +104,13 @@ func (o *outputFlags) prepare(ctx context.Context, input string) error {
 		seen[key] = "another result"
 	}
 	for _, name := range o.files() {
-		if err := writable(name); err != nil {
+		if err := fieldfile.CheckWritable(name); err != nil {
 			return err
 		}
 	}
 	if o.probe != "" {
 		var err error
-		if o.points, err = readProbes(ctx, o.probe); err != nil {
+		if o.points, err = readProbes(o.probe); err != nil {
 			return refuse(err)
 		}
 	}
@@ -136,57 +135,31 @@ func absolute(name string) string {
 	return name
 }
 
-// writable tries whether a file of this name can be put in place.
-func writable(name string) error {
-	if info, err := os.Stat(name); err == nil && !info.Mode().IsRegular() {
-		return fmt.Errorf("%s: want a regular file to write, and this is none", name)
-	}
-	f, err := os.CreateTemp(filepath.Dir(name), ".heatskin-*.tmp")
-	if err != nil {
-		return fmt.Errorf("%s cannot be written: %w", name, plain(err))
-	}
-	f.Close()
-	return os.Remove(f.Name())
-}
-
-// plain strips the name of a temporary file off an error.
-func plain(err error) error {
-	var path *os.PathError
-	if errors.As(err, &path) {
-		return path.Err
-	}
-	return err
-}
-
-// save writes everything that a command found, each file whole or not at all. An
-// interrupt ends the file that is being written; Main waits until it is gone.
+// save writes everything that a command found, each file whole or not at all.
 func (o *outputFlags) save(ctx context.Context, j *job, r *result) error {
 	j.clock.enter("write")
-	shown := r.part
-	if r.rows > shown.NumVertices() {
-		shown = &mesh.Mesh{Positions: r.extended, Triangles: r.part.Triangles, File: r.part.File}
-	}
+	rows := r.shown.NumVertices()
 	fields := make([]fieldfile.Column, len(r.fields))
 	for i, f := range r.fields {
-		fields[i] = fieldfile.Column{Name: f.Name, Values: f.Values[:r.rows]}
+		fields[i] = fieldfile.Column{Name: f.Name, Values: f.Values[:rows]}
 	}
 
 	var pending []table
 	for _, name := range o.out {
 		write := fieldFormats[strings.ToLower(filepath.Ext(name))]
-		pending = append(pending, table{name, func(w io.Writer) error { return write(w, shown, r.rows, fields) }})
+		pending = append(pending, table{name, func(w io.Writer) error { return write(w, r.shown, fields) }})
 	}
 	if o.points != nil {
-		probed := o.points.read(r)
-		pending = append(pending, table{o.probeOut, probed.write})
-		j.noteTable(probed)
+		o.points.read(r)
+		pending = append(pending, table{o.probeOut, o.points.write})
+		j.noteProbes(o.points)
 	}
 	pending = append(pending, r.tables...)
 	if err := j.saveFiles(ctx, pending); err != nil {
 		return err
 	}
 	if len(o.out) == 0 {
-		if err := j.print(ctx, func(w io.Writer) error { return fieldfile.WriteCSV(w, shown, r.rows, fields) }); err != nil {
+		if err := j.print(func(w io.Writer) error { return writeCSV(w, r.shown, fields) }); err != nil {
 			return err
 		}
 	}
@@ -204,42 +177,26 @@ func (o *outputFlags) saveSummary(ctx context.Context, j *job) error {
 
 // saveFiles puts files in place, one after the other.
 func (j *job) saveFiles(ctx context.Context, files []table) error {
-	j.saving.Lock()
-	defer j.saving.Unlock()
 	for _, f := range files {
 		if err := ctx.Err(); err != nil {
 			return err
 		}
-		err := fieldfile.Replace(f.name, func(w io.Writer) error { return f.write(&ctxWriter{ctx, w}) })
-		if err != nil {
-			return fmt.Errorf("writing %s: %w", f.name, plain(err))
+		if err := fieldfile.Replace(f.name, f.write); err != nil {
+			return err
 		}
 	}
 	return nil
 }
 
-// print writes to standard output. The lock is not held: a reader that has stalled
-// must not keep an interrupt waiting.
-func (j *job) print(ctx context.Context, write func(io.Writer) error) error {
-	w := bufio.NewWriterSize(&ctxWriter{ctx, j.std.Out}, 1<<16)
-	if err := write(w); err != nil {
-		return fmt.Errorf("writing to standard output: %w", err)
+// print writes to standard output.
+func (j *job) print(write func(io.Writer) error) error {
+	w := bufio.NewWriterSize(j.std.Out, 1<<16)
+	err := write(w)
+	if err == nil {
+		err = w.Flush()
 	}
-	if err := w.Flush(); err != nil {
-		return fmt.Errorf("writing to standard output: %w", err)
+	if err != nil {
+		return fmt.Errorf("standard output: %w", err)
 	}
 	return nil
-}
-
-// A ctxWriter fails once its context has ended, which makes any writer stop.
-type ctxWriter struct {
-	ctx context.Context
-	w   io.Writer
-}
-
-func (c *ctxWriter) Write(b []byte) (int, error) {
-	if err := c.ctx.Err(); err != nil {
-		return 0, err
-	}
-	return c.w.Write(b)
 }

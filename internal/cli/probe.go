@@ -2,9 +2,6 @@ package cli
 
 import (
 	"bytes"
-	"context"
-	"encoding/csv"
-	"errors"
 	"fmt"
 	"io"
 	"math"
@@ -17,217 +14,163 @@ import (
 	"heatskin/mesh"
 )
 
-// A probeTable is a table of places: those that --probe names, as text, and once a
-// field has been read there, its values.
-type probeTable struct {
+// probes are the places that --probe names, and once a field has been read there,
+// its values.
+type probes struct {
+	table  *fieldfile.Table
 	ids    []string
 	points [][3]float64
-	gaps   []float64
+	places []mesh.Datum // the surface points nearest to them, once found
 	fields []fieldfile.Column
-	header []string   // of further columns, which are carried over
-	more   [][]string // by row
 }
 
-// A tableError is a place in a CSV file that makes no sense there.
-type tableError struct {
-	File      string
-	Line      int // from 1
-	Want, Got string
-}
+var probeColumns = []string{"id", "x", "y", "z"}
 
-func (e *tableError) Error() string {
-	return fmt.Sprintf("%s:%d: want %s, got %s", e.File, e.Line, e.Want, e.Got)
-}
-
-// readPoints reads the columns x,y,z of a CSV file.
-func readPoints(ctx context.Context, name string) ([][3]float64, error) {
-	t, err := readPlaces(ctx, name, []string{"x", "y", "z"})
+// readProbes reads a CSV file with the columns id,x,y,z and any others.
+func readProbes(name string) (*probes, error) {
+	t, err := readTable(name, probeColumns...)
 	if err != nil {
 		return nil, err
 	}
-	return t.points, nil
+	p := &probes{table: t, ids: t.Texts("id")}
+	p.points, err = pointsOf(t)
+	return p, err
 }
 
-// readProbes reads a CSV file with the columns id,x,y,z and any others.
-func readProbes(ctx context.Context, name string) (*probeTable, error) {
-	return readPlaces(ctx, name, []string{"id", "x", "y", "z"})
+// readPoints reads the columns x,y,z of a CSV file.
+func readPoints(name string) ([][3]float64, error) {
+	t, err := readTable(name, "x", "y", "z")
+	if err != nil {
+		return nil, err
+	}
+	return pointsOf(t)
 }
 
-// readPlaces reads a table of places with at least the wanted columns, in any order.
-func readPlaces(ctx context.Context, name string, wanted []string) (*probeTable, error) {
+// readTable reads a CSV file that must have at least one row.
+func readTable(name string, columns ...string) (*fieldfile.Table, error) {
 	f, err := openInput(name)
 	if err != nil {
 		return nil, err
 	}
 	defer f.Close()
-	rows := csv.NewReader(fieldfile.SkipMark(f))
-	rows.TrimLeadingSpace = true
-	header, err := rows.Read()
+	t, err := fieldfile.ReadTable(f, name, columns...)
 	if err != nil {
-		return nil, csvError(name, err, "a header row with the columns "+strings.Join(wanted, ","))
+		return nil, err
 	}
-	for i := range header {
-		header[i] = strings.TrimSpace(header[i])
-	}
-	at := make(map[string]int)
-	for _, column := range wanted {
-		i := slices.Index(header, column)
-		if i < 0 {
-			return nil, &tableError{name, 1, "the columns " + strings.Join(wanted, ","), strconv.Quote(strings.Join(header, ","))}
-		}
-		at[column] = i
-	}
-	t := &probeTable{}
-	var others []int
-	for i, column := range header {
-		if slices.Index(header, column) != i {
-			return nil, &tableError{name, 1, "each column once", fmt.Sprintf("%q twice", column)}
-		}
-		if !slices.Contains(wanted, column) {
-			others = append(others, i)
-			t.header = append(t.header, column)
-		}
-	}
-	for {
-		row, err := rows.Read()
-		if err == io.EOF {
-			break
-		}
-		if err != nil {
-			return nil, csvError(name, err, "")
-		}
-		if err := ctx.Err(); err != nil {
-			return nil, err
-		}
-		var x [3]float64
-		for axis, column := range []string{"x", "y", "z"} {
-			text := row[at[column]]
-			if x[axis], err = finite(text); err != nil {
-				line, _ := rows.FieldPos(at[column])
-				return nil, &tableError{name, line, "a finite number as " + column, strconv.Quote(text)}
-			}
-		}
-		if i, ok := at["id"]; ok {
-			t.ids = append(t.ids, strings.TrimSpace(row[i]))
-		}
-		more := make([]string, len(others))
-		for k, i := range others {
-			more[k] = row[i]
-		}
-		t.points = append(t.points, x)
-		t.more = append(t.more, more)
-	}
-	if len(t.points) == 0 {
-		line, _ := rows.FieldPos(0)
-		return nil, &tableError{name, line + 1, "at least one row", "end of file"}
+	if t.Rows() == 0 {
+		return nil, &fieldfile.TableError{File: name, Line: 2, Want: "at least one row", Got: "end of file"}
 	}
 	return t, nil
 }
 
-// csvError tells what encoding/csv met in our words.
-func csvError(name string, err error, wanted string) error {
-	var parse *csv.ParseError
-	switch {
-	case err == io.EOF:
-		return &tableError{name, 1, wanted, "end of file"}
-	case errors.As(err, &parse) && errors.Is(parse.Err, csv.ErrFieldCount):
-		return &tableError{name, parse.Line, "as many fields as the header has", "another number"}
-	case errors.As(err, &parse):
-		return &tableError{name, parse.Line, "a CSV row", parse.Err.Error()}
+func pointsOf(t *fieldfile.Table) ([][3]float64, error) {
+	points := make([][3]float64, t.Rows())
+	for axis, column := range []string{"x", "y", "z"} {
+		values, err := t.Floats(column)
+		if err != nil {
+			return nil, err
+		}
+		for row, x := range values {
+			points[row][axis] = x
+		}
 	}
-	return fmt.Errorf("%s: %w", name, err)
+	return points, nil
 }
 
-// read takes the fields of r at the surface points nearest to the probes: linear
-// inside a triangle. A place where a corner has no value has none either.
-func (t *probeTable) read(r *result) *probeTable {
-	at := *t
-	at.gaps = make([]float64, len(t.points))
-	for _, f := range r.fields {
-		at.fields = append(at.fields, fieldfile.Column{Name: f.Name, Values: make([]float64, len(t.points))})
+// on finds the surface points nearest to the probes.
+func (p *probes) on(part *mesh.Mesh) []mesh.Datum {
+	if p.places == nil {
+		find := &placer{part: part}
+		for i, x := range p.points {
+			p.places = append(p.places, find.nearest(x, "probe "+p.ids[i]))
+		}
 	}
-	locator := mesh.NewLocator(r.part)
-	for i, x := range t.points {
-		var place mesh.Point
-		place, at.gaps[i] = locator.Nearest(x)
-		corners := r.part.Triangles[3*place.Triangle : 3*place.Triangle+3]
-		for k, f := range r.fields {
-			sum := 0.0
-			for c, weight := range place.Weights {
+	return p.places
+}
+
+// read takes the fields of r at the probes: linear inside a triangle, unless the
+// command knows better. Where a corner has no value there is none.
+func (p *probes) read(r *result) {
+	places := p.on(r.part)
+	if p.fields = r.probed; p.fields != nil {
+		return
+	}
+	for _, f := range r.fields {
+		values := make([]float64, len(places))
+		for i, place := range places {
+			corners := r.part.Triangles[3*place.Point.Triangle:]
+			for k, weight := range place.Point.Weights {
 				if weight != 0 { // an infinite corner opposite to an edge does not count on it
-					sum += weight * f.Values[corners[c]]
+					values[i] += weight * f.Values[corners[k]]
 				}
 			}
-			at.fields[k].Values[i] = sum
 		}
+		p.fields = append(p.fields, fieldfile.Column{Name: f.Name, Values: values})
 	}
-	if r.probed != nil {
-		at.fields = r.probed
-	}
-	return &at
 }
 
-// write writes id,x,y,z,gap, the fields, and the columns that were carried over.
-func (t *probeTable) write(w io.Writer) error {
-	rows := csv.NewWriter(w)
-	header := []string{"id", "x", "y", "z", "gap"}
-	for _, f := range t.fields {
-		header = append(header, f.Name)
-	}
-	if err := rows.Write(append(header, t.header...)); err != nil {
-		return err
-	}
-	for i, x := range t.points {
-		row := []string{t.ids[i], full(x[0]), full(x[1]), full(x[2]), full(t.gaps[i])}
-		for _, f := range t.fields {
-			row = append(row, full(f.Values[i]))
+// write writes id,x,y,z,gap, the fields, and the columns that are carried over.
+func (p *probes) write(w io.Writer) error {
+	columns := []fieldfile.Series{fieldfile.Text("id", p.ids)}
+	for axis, name := range []string{"x", "y", "z"} {
+		values := make([]float64, len(p.points))
+		for i, x := range p.points {
+			values[i] = x[axis]
 		}
-		if err := rows.Write(append(row, t.more[i]...)); err != nil {
-			return err
-		}
+		columns = append(columns, fieldfile.Floats(name, values))
 	}
-	rows.Flush()
-	return rows.Error()
+	gaps := make([]float64, len(p.places))
+	for i, place := range p.places {
+		gaps[i] = place.Gap
+	}
+	columns = append(columns, fieldfile.Floats("gap", gaps))
+	for _, f := range p.fields {
+		columns = append(columns, fieldfile.Floats(f.Name, f.Values))
+	}
+	return fieldfile.WriteTable(w, len(p.ids), append(columns, p.table.Others(probeColumns...)...)...)
 }
 
-// full writes a number so that it reads back to the same double.
-func full(x float64) string {
-	switch {
-	case math.IsNaN(x):
-		return "nan"
-	case math.IsInf(x, 0):
-		return strings.TrimPrefix(strings.ToLower(strconv.FormatFloat(x, 'g', -1, 64)), "+")
-	}
-	return strconv.FormatFloat(x, 'g', -1, 64)
-}
-
-// shownProbes is how many rows of a probe table are also shown at the terminal.
+// shownProbes is how many probes are also shown at the terminal.
 const shownProbes = 20
 
-// noteTable shows the user a short table of the probes, rounded.
-func (j *job) noteTable(t *probeTable) {
-	if j.quiet || len(t.points) > shownProbes {
+// noteProbes shows the user a short table of the probes, rounded.
+func (j *job) noteProbes(p *probes) {
+	if j.quiet || len(p.ids) > shownProbes {
 		return
 	}
 	var b bytes.Buffer
 	rows := tabwriter.NewWriter(&b, 0, 0, 2, ' ', tabwriter.AlignRight)
-	line := func(first string, fields []string) {
-		fmt.Fprintf(rows, "  %s\t%s\t\n", first, strings.Join(fields, "\t"))
-	}
-	header := []string{"gap"}
-	for _, f := range t.fields {
+	line := func(cells []string) { fmt.Fprintf(rows, "  %s\t\n", strings.Join(cells, "\t")) }
+	header := []string{"probe", "gap"}
+	for _, f := range p.fields {
 		header = append(header, f.Name)
 	}
-	line("probe", append(header, t.header...))
-	for i := range t.points {
-		row := []string{rounded(t.gaps[i])}
-		for _, f := range t.fields {
+	var others []int // numbers of the columns that are carried over
+	for column, name := range p.table.Names {
+		if !slices.Contains(probeColumns, name) {
+			others = append(others, column)
+			header = append(header, name)
+		}
+	}
+	line(header)
+	for i, id := range p.ids {
+		row := []string{id, rounded(p.places[i].Gap)}
+		for _, f := range p.fields {
 			row = append(row, rounded(f.Values[i]))
 		}
-		line(t.ids[i], append(row, t.more[i]...))
+		for _, column := range others {
+			row = append(row, p.table.Cell(i, column))
+		}
+		line(row)
 	}
 	rows.Flush() // into memory: it cannot fail
 	j.clock.above(func() { _, _ = b.WriteTo(j.std.Err) })
 }
 
-func rounded(x float64) string { return strconv.FormatFloat(x, 'g', 6, 64) }
+// rounded is a number for reading.
+func rounded(x float64) string {
+	if math.IsInf(x, 1) {
+		return "inf"
+	}
+	return strings.ToLower(strconv.FormatFloat(x, 'g', 6, 64))
+}

@@ -116,8 +116,8 @@ func atFile(name string) (asked, error) {
 	if name == "" {
 		return nil, errors.New("want the name of a CSV file with columns x,y,z")
 	}
-	return func(ctx context.Context, p *placer) ([]mesh.Datum, error) {
-		points, err := readPoints(ctx, name)
+	return func(_ context.Context, p *placer) ([]mesh.Datum, error) {
+		points, err := readPoints(name)
 		if err != nil {
 			return nil, err
 		}
