@@ -17,7 +17,7 @@ type ritz struct {
 }
 
 func (q *Process) decompose() *ritz {
-	if q.ritz != nil {
+	if q.ritz != nil && len(q.ritz.z) == len(q.alpha) {
 		return q.ritz
 	}
 	m := len(q.alpha)
@@ -32,6 +32,9 @@ func (q *Process) decompose() *ritz {
 	q.ritz = r
 	return r
 }
+
+// standing is how many steps in a row a bound on the spectrum must have stood.
+const standing = 5
 
 // probePoints spreads points over the interval that holds the spectrum of B: some
 // between every two Ritz values, some beyond the outermost ones.
@@ -54,9 +57,22 @@ func (q *Process) probePoints(r *ritz) {
 			r.probe = append(r.probe, z)
 		}
 	}
-	// Above the largest Ritz value B has no eigenvalue beyond the residual of that
-	// pair, save where the start vector has none of it; twice that is looked at.
-	top := min(1, high+2*beta*math.Abs(r.last[m-1])+1e-3*spread)
+	// Above the largest Ritz value B has no eigenvalue beyond the residual of that pair,
+	// save one that the start vector has next to nothing of; such a one grows from step
+	// to step until it is found. So a bound counts once it has stood for some steps, and
+	// until then the whole interval does.
+	bound := high + 2*beta*math.Abs(r.last[m-1]) + 1e-3*spread
+	q.bounds = append(q.bounds[:min(len(q.bounds), m-1)], bound)
+	top := 1.0
+	if stood := m - standing; stood >= 0 && len(q.bounds) == m {
+		firm := true
+		for _, b := range q.bounds[stood:] {
+			firm = firm && high <= b
+		}
+		if firm {
+			top = min(1, bound)
+		}
+	}
 	for _, s := range [4]float64{0.25, 0.5, 0.75, 1} {
 		if z := high + s*(top-high); z-high > 1e-4*spread {
 			r.probe = append(r.probe, z)

@@ -29,6 +29,7 @@ type Process struct {
 	dots        []float64
 	exhausted   bool // the space is invariant: every function is exact
 	ritz        *ritz
+	bounds      []float64 // by step: where the spectrum of B seemed to end
 }
 
 // NewProcess starts a process with the load b, which it does not keep. It costs one
@@ -105,7 +106,6 @@ func (q *Process) Extend(ctx context.Context) error {
 
 	q.alpha = append(q.alpha, a)
 	q.beta = append(q.beta, norm)
-	q.ritz = nil
 	size := 0.0
 	for _, a := range q.alpha {
 		size = max(size, math.Abs(a))
@@ -116,6 +116,7 @@ func (q *Process) Extend(ctx context.Context) error {
 	}
 	q.work = make([]float64, p.Dim)
 	q.append(w, norm)
+	q.decompose() // at every step, for the bounds
 	return nil
 }
 
