@@ -81,7 +81,10 @@ func (f *march) space(ctx context.Context, factor *sparse.Factor, group []int) (
 	}
 	start, growth := f.drift()
 	pending := slices.Clone(group)
-	scale := make([]float64, len(f.times)) // by time: its largest value, as last looked at
+	looked := make(map[int]*glance, len(group))
+	for _, i := range group {
+		looked[i] = &glance{}
+	}
 	for round := 0; len(pending) > 0; round++ {
 		final := true
 		for _, q := range parts {
@@ -91,34 +94,30 @@ func (f *march) space(ctx context.Context, factor *sparse.Factor, group []int) (
 		var slowest *part
 		worst := 0.0
 		for _, i := range pending {
-			estimate, most := 0.0, -1.0
+			t, g := f.times[i], looked[i]
+			now, total, most := 0.0, 0.0, -1.0 // error estimates: at t, of the integral up to t
 			var behind *part
 			for _, q := range parts {
-				_, _, e := q.Evaluate(q.now(f.times[i], shift))
-				estimate += e
-				if !(e <= most) && !q.Exhausted() && q.Len() < basisLimit {
+				_, _, e := q.Evaluate(q.now(t, shift))
+				_, _, e2 := q.Evaluate(q.total(t, shift))
+				now, total = now+e, total+e2
+				if e = max(e, e2/t); !(e <= most) && !q.Exhausted() && q.Len() < basisLimit {
 					most, behind = e, q
 				}
 			}
-			if estimate <= f.tolerance*scale[i] || final || round%6 == 5 {
-				w := f.combine(parts, f.times[i], shift, start, growth, false)
-				scale[i] = f.largest(w)
+			if g.error(now, total, t, f.size) <= f.tolerance || final || round%6 == 5 {
+				g.now = f.combine(parts, t, shift, start, growth, false)
+				g.total = f.combine(parts, t, shift, start, growth, true)
+				g.largest, g.largestTotal = f.largest(g.now, 1), f.largest(g.total, t)
 			}
-			// A field that has died away is measured against what it once was.
-			against := max(scale[i], 1e-30*f.size)
-			done := estimate <= f.tolerance*against
-			if done || final && len(group) == 1 {
-				w := f.combine(parts, f.times[i], shift, start, growth, false)
-				total := f.combine(parts, f.times[i], shift, start, growth, true)
-				f.settle(i, w, total)
-				r.ErrorEstimates[i] = 0x1p-50
-				if against > 0 {
-					r.ErrorEstimates[i] += estimate / against
-				}
+			relative := g.error(now, total, t, f.size)
+			if relative <= f.tolerance || final && len(group) == 1 {
+				f.settle(i, g.now, g.total)
+				r.ErrorEstimates[i] = relative + 0x1p-50
 				continue
 			}
 			rest = append(rest, i)
-			if relative := estimate / against; !(relative <= worst) {
+			if !(relative <= worst) {
 				worst, slowest = relative, behind
 			}
 		}
@@ -135,6 +134,27 @@ func (f *march) space(ctx context.Context, factor *sparse.Factor, group []int) (
 		}
 	}
 	return pending, nil
+}
+
+// A glance is what was last seen of the field at one time: its free part and that of
+// its integral, and the largest values of both, held values in place.
+type glance struct {
+	now, total            []float64
+	largest, largestTotal float64
+}
+
+// error is the larger of the errors of field and integral over their largest values,
+// infinite before the first look. A field that has died away is measured against a
+// trace of what it once was.
+func (g *glance) error(now, total, t, size float64) float64 {
+	trace := 1e-30 * size
+	switch {
+	case g.now == nil:
+		return math.Inf(1)
+	case now == 0 && total == 0:
+		return 0
+	}
+	return max(now/max(g.largest, trace), total/max(g.largestTotal, t*trace))
 }
 
 // A part is one of the two things that a field is made of.
@@ -168,12 +188,13 @@ func (f *march) combine(parts []*part, t, shift float64, start, growth []float64
 	return w
 }
 
-// largest is the largest absolute value of the field whose free part is w.
-func (f *march) largest(w []float64) float64 {
+// largest is the largest absolute value of the field whose free part is w, held values
+// counting times weight.
+func (f *march) largest(w []float64, weight float64) float64 {
 	top := 0.0
 	for v, x := range w {
 		if f.solver.component[v] >= 0 {
-			top = max(top, math.Abs(x+f.lift[v]))
+			top = max(top, math.Abs(x+weight*f.lift[v]))
 		}
 	}
 	return top

@@ -173,6 +173,7 @@ func (y *system) start() {
 		y.b[i] = y.put[i] - y.b[i]
 		if pr.Load != nil {
 			y.p[i] += pr.Load[i]
+			y.size = max(y.size, math.Abs(pr.Load[i]/s.lumped[i]))
 			y.begin += pr.Load[i]
 		}
 	}
