@@ -1,0 +1,476 @@
+package geodesic
+
+import (
+	"context"
+	"math"
+	"slices"
+	"unsafe"
+
+	"heatskin/mesh"
+)
+
+// Options narrow what Spread does. The zero value asks for the whole mesh.
+type Options struct {
+	// Radius ends the wave: vertices farther than it stay +Inf. 0 is no limit.
+	Radius float64
+	// Targets end the wave once the distance of each is known. Distances of other
+	// places are given only if they are no farther.
+	Targets []mesh.Datum
+	// Any ends the wave once the nearest of Targets is known.
+	Any bool
+	// Keep holds all windows, so that At serves any point. Memory then follows the
+	// area that the wave has run over, of the order of a kilobyte a triangle.
+	Keep bool
+	// MaxBytes bounds working memory; 0 is no limit.
+	MaxBytes int64
+}
+
+// A Wave is the distances that one set of sources gave.
+type Wave struct {
+	// Distances by vertex; +Inf where no path leads, beyond Reach, and at vertices
+	// that lie in no triangle of positive area.
+	Distances []float64
+	// Targets holds the distance of each of Options.Targets, +Inf if it was not reached.
+	Targets []float64
+	// Reach is how far the wave ran: distances up to it are exact, others are not known.
+	// +Inf if it ran to the end.
+	Reach float64
+	// Windows counts the windows carried across a triangle, a measure of work.
+	Windows int64
+	// PeakBytes is the most memory that the wave's own tables took.
+	PeakBytes int64
+
+	wave *wave
+}
+
+// wave is the state of one propagation.
+type wave struct {
+	*Solver
+	opt    Options
+	radius float64
+
+	distance []float64 // by vertex
+	sends    []uint8   // by vertex: 0 not yet known, else one of the below
+	list     []int32   // by halfedge: the number of its envelope in pool plus 1, 0 if it has none
+	waits    []float64 // by halfedge: the least distance of windows that wait to cross; +Inf if none
+	pool     pool
+	events   eventHeap
+	old      []int32 // halfedges crossed whose envelopes are kept
+	now      float64 // no window still to cross is nearer than this
+	survey   int     // turns until now is found anew
+	crossed  int64
+	peak     int64
+
+	left, right, merged, spare envelope // scratch
+
+	points  map[int32][]sourcePoint // source points by triangle
+	targets targets
+
+	// If lines are to be drawn, else nil:
+	parents []parent        // by vertex
+	ends    map[int32]int32 // vertices that are sources: which
+	lines   map[int32]int32 // halfedges that are sources: which
+}
+
+const (
+	sendsNot uint8 = 1 + iota
+	sendsOn
+	sent
+)
+
+// Spread lets the wave run from the data over the mesh. The error is a *DatumError, a
+// *MemoryError or ctx.Err(). Time is about that of 10 to 50 runs of Dijkstra's
+// algorithm along the edges; memory 50 bytes a triangle and 8 a vertex, plus 48 for
+// each window on the wave's front.
+func (s *Solver) Spread(ctx context.Context, data []mesh.Datum, opt Options) (*Wave, error) {
+	v, err := s.start(data, opt, false)
+	if err != nil {
+		return nil, err
+	}
+	if err := v.run(ctx); err != nil {
+		return nil, err
+	}
+	return v.result(), nil
+}
+
+// Field is the exact distance of every vertex of m from the data, +Inf where no path
+// leads. Options and errors are those of Solver.Spread.
+func Field(ctx context.Context, m *mesh.Mesh, data []mesh.Datum, opt Options) ([]float64, error) {
+	w, err := NewSolver(m).Spread(ctx, data, opt)
+	if err != nil {
+		return nil, err
+	}
+	return w.Distances, nil
+}
+
+func (s *Solver) start(data []mesh.Datum, opt Options, lines bool) (*wave, error) {
+	n, halfedges := s.mesh.NumVertices(), len(s.mesh.Triangles)
+	v := &wave{
+		Solver: s, opt: opt, radius: opt.Radius,
+		distance: make([]float64, n),
+		sends:    make([]uint8, n),
+		list:     make([]int32, halfedges),
+		waits:    make([]float64, halfedges),
+	}
+	if !(v.radius > 0) {
+		v.radius = math.Inf(1)
+	}
+	if lines {
+		v.parents, v.ends, v.lines = make([]parent, n), map[int32]int32{}, map[int32]int32{}
+	}
+	inf := math.Inf(1)
+	for i := range v.distance {
+		v.distance[i] = inf
+	}
+	for i := range v.waits {
+		v.waits[i] = inf
+	}
+	if err := v.aim(opt.Targets); err != nil {
+		return nil, err
+	}
+	if err := v.source(data); err != nil {
+		return nil, err
+	}
+	return v, nil
+}
+
+// run carries windows on until none is left or all that was asked for is known.
+//
+// Halfedges wait in order of the farthest that any of their points can be, so that
+// windows from both sides of the triangle behind have come together before they
+// cross. That makes the order not quite that of distance: now, the least distance
+// still to come, is found by going through all that wait, once in as many turns.
+func (v *wave) run(ctx context.Context) error {
+	halfedges := int32(len(v.waits))
+	inf := math.Inf(1)
+	for ; len(v.events) > 0; v.survey-- {
+		if v.survey <= 0 {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			v.look()
+			if err := v.weigh(); err != nil {
+				return err
+			}
+			if v.done() {
+				return nil
+			}
+		}
+		e := v.events.pop()
+		if e.id < halfedges {
+			v.waits[e.id] = inf
+			v.cross(e.id)
+		} else if vertex := e.id - halfedges; v.sends[vertex] == sendsOn && e.key == v.distance[vertex] {
+			v.sends[vertex] = sent
+			v.send(vertex)
+		}
+	}
+	v.now = inf
+	return nil
+}
+
+// look finds how near the nearest window still to cross is, and forgets envelopes
+// that no window can touch any more.
+func (v *wave) look() {
+	halfedges := int32(len(v.waits))
+	now := math.Inf(1)
+	for _, e := range v.events {
+		if e.id < halfedges {
+			now = min(now, v.waits[e.id])
+		} else {
+			now = min(now, e.key)
+		}
+	}
+	v.now = max(v.now, now)
+	if !v.opt.Keep {
+		kept := v.old[:0]
+		for _, h := range v.old {
+			if v.waits[h] < math.Inf(1) || v.bound(h) >= v.now {
+				kept = append(kept, h)
+			} else {
+				v.pool.drop(v.list[h] - 1)
+				v.list[h] = 0
+			}
+		}
+		v.old = kept
+	}
+	v.survey = max(64, len(v.events)+len(v.old)/2)
+}
+
+// bound is a distance that no point of halfedge h exceeds: one goes there from its
+// ends.
+func (v *wave) bound(h int32) float64 {
+	t := v.mesh.Triangles
+	return (v.distance[t[h]] + v.distance[t[following(h)]] + v.edgeLength(h)) / 2
+}
+
+// weigh compares working memory with the limit.
+func (v *wave) weigh() error {
+	bytes := int64(cap(v.pool.slab))*int64(unsafe.Sizeof(window{})) + int64(cap(v.pool.lists))*32 +
+		int64(cap(v.events))*16 + int64(cap(v.old))*4 +
+		int64(len(v.distance))*9 + int64(len(v.list))*12 +
+		int64(len(v.parents))*int64(unsafe.Sizeof(parent{}))
+	v.peak = max(v.peak, bytes)
+	if v.opt.MaxBytes > 0 && bytes > v.opt.MaxBytes {
+		return &MemoryError{Bytes: bytes, Limit: v.opt.MaxBytes, Reach: v.now}
+	}
+	return nil
+}
+
+// result reads the wave off.
+func (v *wave) result() *Wave {
+	w := &Wave{Distances: v.distance, Reach: min(v.now, v.radius), Windows: v.crossed, PeakBytes: v.peak, wave: v}
+	for i, d := range v.distance {
+		if d > w.Reach || !(d < math.Inf(1)) || !v.hasArea(int32(i)) {
+			v.distance[i] = math.Inf(1)
+		}
+	}
+	w.Targets = v.targetDistances(w.Reach)
+	if !v.opt.Keep {
+		v.pool, v.list, v.waits = pool{}, nil, nil
+	}
+	v.events, v.old = nil, nil
+	return w
+}
+
+// hasArea tells whether vertex i lies in a triangle of positive area.
+func (s *Solver) hasArea(i int32) bool {
+	for _, h := range s.corners(i) {
+		if !s.flat(h) {
+			return true
+		}
+	}
+	return false
+}
+
+// lower sets the distance of a vertex to d, if that is less, and says so.
+func (v *wave) lower(vertex int32, d float64) bool {
+	if !(d < v.distance[vertex]) || d > v.radius {
+		return false
+	}
+	v.distance[vertex] = d
+	if v.sends[vertex] == 0 {
+		v.sends[vertex] = sendsNot
+		if v.sendsOn(vertex) {
+			v.sends[vertex] = sendsOn
+		}
+	}
+	if v.sends[vertex] != sendsNot {
+		v.sends[vertex] = sendsOn
+		v.events.push(event{d, int32(len(v.waits)) + vertex})
+	}
+	return true
+}
+
+// send lets the wave out of a vertex into all its triangles.
+func (v *wave) send(vertex int32) {
+	d := v.distance[vertex]
+	for _, out := range v.corners(vertex) {
+		h := following(out) // opposite the vertex
+		l := v.lay(h)
+		v.fromCorner(vertex, l.a, d+v.between(vertex, l.a))
+		v.fromCorner(vertex, l.b, d+v.between(vertex, l.b))
+		if !l.degenerate {
+			v.emitWhole(h, &l, window{b1: l.length, x: l.x, y: l.y, far: d})
+		}
+	}
+}
+
+// emitWhole sends one window out of the triangle of layout l through halfedge h itself.
+func (v *wave) emitWhole(h int32, l *layout, w window) {
+	g := v.gate(h, l.a, l.b, l.length, &v.left)
+	v.emit(&g, &w)
+	v.deliver(&g)
+}
+
+// A gate is an edge that windows leave a triangle by. They gather in run, in order
+// from tail to head, before the envelopes across take them in together.
+type gate struct {
+	h          int32 // halfedge of the triangle left
+	tail, head int32
+	length     float64
+	thin       float64
+	dt, dh     float64 // distances of tail and head
+	bound      float64 // no point of the edge is farther
+	least      float64 // least distance of the windows in run
+	run        *envelope
+	hasTargets bool
+}
+
+func (v *wave) gate(h, tail, head int32, length float64, run *envelope) gate {
+	g := gate{h: h, tail: tail, head: head, length: length, thin: narrow * length, least: math.Inf(1), run: run}
+	*run = (*run)[:0]
+	v.rate(&g)
+	g.hasTargets = v.targets.edges != nil && v.targets.edges[h] != nil
+	return g
+}
+
+// rate brings the gate's distances up to date.
+func (v *wave) rate(g *gate) {
+	g.dt, g.dh = v.distance[g.tail], v.distance[g.head]
+	g.bound = min((g.dt+g.dh+g.length)/2, v.radius)
+}
+
+// emit lets a window into the gate's run, unless it is plain that no shortest path
+// goes through it: a way along the edge from one of its ends to the window's far end
+// is as short, or all of the edge is as near.
+func (v *wave) emit(g *gate, w *window) {
+	if w.reaches(w.b1, g.dt+w.b1) || w.reaches(w.b0, g.dh+(g.length-w.b0)) {
+		return
+	}
+	t := w.nearest()
+	if w.reaches(t, g.bound) {
+		return
+	}
+	if !w.reaches(t, g.least) {
+		g.least = w.at(t)
+	}
+	if g.hasTargets {
+		v.hitEdge(g, w)
+	}
+	g.run.add(*w, g.thin, &v.spare)
+}
+
+// deliver gives the run of a gate to the halfedges across.
+func (v *wave) deliver(g *gate) {
+	if len(*g.run) == 0 {
+		return
+	}
+	ahead := true // the run is in order from tail to head
+	for p := v.glue[g.h]; p != g.h; p = v.glue[p] {
+		if (v.mesh.Triangles[p] == g.tail) != ahead {
+			ahead = !ahead
+			slices.Reverse(*g.run)
+			for i, w := range *g.run {
+				(*g.run)[i] = w.turned(g.length)
+			}
+		}
+		v.receive(p, *g.run, g.thin)
+		if g.least < v.waits[p] {
+			if math.IsInf(v.waits[p], 1) {
+				v.events.push(event{(g.dt + g.dh + g.length) / 2, p})
+			}
+			v.waits[p] = g.least
+		}
+	}
+}
+
+// receive merges a run into the envelope of h.
+func (v *wave) receive(h int32, run envelope, thin float64) {
+	i := v.list[h] - 1
+	if i < 0 {
+		v.list[h] = v.pool.store(i, run) + 1
+		v.old = append(v.old, h)
+		return
+	}
+	have := v.pool.windows(i)
+	merged := v.merged[:0]
+	for len(have) > 0 || len(run) > 0 {
+		if len(run) == 0 || len(have) > 0 && have[0].b0 <= run[0].b0 {
+			merged.add(have[0], thin, &v.spare)
+			have = have[1:]
+		} else {
+			merged.add(run[0], thin, &v.spare)
+			run = run[1:]
+		}
+	}
+	v.merged = merged
+	v.pool.store(i, merged)
+}
+
+// cross carries the windows on h that have not been yet across its triangle.
+func (v *wave) cross(h int32) {
+	l := v.lay(h)
+	if l.degenerate {
+		return
+	}
+	v.fromCorner(l.a, l.c, v.distance[l.a]+l.toA)
+	v.fromCorner(l.b, l.c, v.distance[l.b]+l.toB)
+	left := v.gate(l.gateA, l.a, l.c, l.toA, &v.left)
+	right := v.gate(l.gateB, l.c, l.b, l.toB, &v.right)
+	watched := v.targets.faces != nil && v.targets.faces[h/3] != nil
+	slack := slackShare * l.length
+	windows := v.pool.windows(v.list[h] - 1)
+	for i := range windows {
+		w := &windows[i]
+		if w.flags&crossed != 0 {
+			continue
+		}
+		v.crossed++
+		if watched {
+			v.hitFace(h, &l, w)
+		}
+		apex, ok := w.hit(l.x, l.y)
+		if !ok {
+			w.flags |= crossed
+			continue
+		}
+		if apex >= w.b0-slack && apex <= w.b1+slack {
+			v.throughWindow(h, &l, w)
+			v.rate(&left)
+			v.rate(&right)
+		}
+		if w.b0 < apex && l.toA > 0 {
+			var out window
+			out.flags, out.far = w.flags, w.far
+			if w.flags&parallel != 0 {
+				out.x = w.x*l.uax + w.y*l.uay
+				out.y = w.y*l.uax - w.x*l.uay
+			} else {
+				out.x = w.x*l.uax - w.y*l.uay
+				out.y = max(w.x*l.uay+w.y*l.uax, 0)
+			}
+			out.b0 = land(w, w.b0, w.b0, l.uax, -l.uay, l.toA)
+			out.b1 = l.toA
+			if w.b1 < apex {
+				out.b1 = land(w, w.b1, w.b1, l.uax, -l.uay, l.toA)
+			}
+			if out.b1 > out.b0 {
+				v.emit(&left, &out)
+			}
+		}
+		if w.b1 > apex && l.toB > 0 {
+			var out window
+			out.flags, out.far = w.flags, w.far
+			if w.flags&parallel != 0 {
+				// Axis from C to B: (ubx, -uby).
+				out.x = w.x*l.ubx - w.y*l.uby
+				out.y = w.y*l.ubx + w.x*l.uby
+				out.far += w.x*l.x + w.y*l.y
+			} else {
+				out.x = l.toB - ((l.length-w.x)*l.ubx - w.y*l.uby)
+				out.y = max((l.length-w.x)*l.uby+w.y*l.ubx, 0)
+			}
+			out.b1 = l.toB - land(w, w.b1, l.length-w.b1, l.ubx, l.uby, l.toB)
+			if w.b0 > apex {
+				out.b0 = l.toB - land(w, w.b0, l.length-w.b0, l.ubx, l.uby, l.toB)
+			}
+			if out.b1 > out.b0 {
+				v.emit(&right, &out)
+			}
+		}
+		w.flags |= crossed
+	}
+	v.deliver(&left)
+	v.deliver(&right)
+}
+
+// land is where w's ray through b, at distance arm from a corner, meets the edge that
+// leaves the corner in direction (ux, |uy|) from AB, measured from there. uy is
+// negative at A, positive at B.
+func land(w *window, b, arm, ux, uy, length float64) float64 {
+	p, q := w.ray(b)
+	if arm <= 0 || q == 0 {
+		return 0
+	}
+	if d := q*ux + p*uy; d > 0 {
+		return min(arm*(q/d), length)
+	}
+	return length
+}
+
+// slackShare is how far (of the halfedge) a vertex may lie beside a window's rays and
+// still be given its distance: windows that end at a vertex may gape there by
+// round-off. What is wrong with such a distance is of second order in the gap where
+// the vertex bends paths, and loses against a better one where it does not.
+const slackShare = 1e-10
