@@ -152,4 +152,3 @@ func (a *Analysis) below(s int32) []int32 {
 	node := &a.nodes[s]
 	return a.rows[node.rows : node.rows+int64(node.m-node.w)]
 }
-
