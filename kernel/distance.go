@@ -17,12 +17,12 @@ type DistanceOptions struct {
 
 // A DistanceResult is a field of distances and how it came about.
 type DistanceResult struct {
-	Distance  []float64 // by vertex of the surface; +Inf where no source can be reached from
-	Times     []float64 // t of the heat solve by component; NaN without a source
-	Mended    int       // vertices that the heat order had too early
-	Solves    int       // linear solves
-	Shortest  float64   // least mean edge length of the components with sources
-	Reached   int       // vertices with a finite distance
+	Distance []float64 // by vertex of the surface; +Inf where no source can be reached from
+	Times    []float64 // t of the heat solve by component; NaN without a source
+	Mended   int       // vertices that the heat order had too early
+	Solves   int       // linear solves
+	Shortest float64   // least mean edge length of the components with sources
+	Reached  int       // vertices with a finite distance
 }
 
 // longest is how many times √t a part may measure, from its sources: u falls like

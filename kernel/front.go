@@ -26,6 +26,7 @@ type front struct {
 	kappa []float64 // curvature of the front; +Inf at a source
 	back  []float64 // angle of the ray back, in the vertex's frame; NaN where there is none
 	noise []float64 // how far directions may be off, from the curvature the ray has met
+	weak  []bool    // reached on the word of one end of an edge only, or round a bend
 	done  []bool    // may give its value on
 	fixed []bool    // a source: not to be changed
 	line  []bool    // by halfedge: the edge is a source as a whole; nil if there are none
@@ -48,7 +49,7 @@ func newFront(s *mesh.Surface, f *frames) *front {
 	return &front{
 		s: s, frame: f,
 		d: make([]float64, n), kappa: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
-		done: make([]bool, n), fixed: make([]bool, n),
+		weak: make([]bool, n), done: make([]bool, n), fixed: make([]bool, n),
 	}
 }
 
@@ -74,11 +75,20 @@ func (w *front) start(vertices []int32, line []bool) {
 }
 
 // An arrival is the front's state at a vertex.
-type arrival struct{ d, kappa, back, noise float64 }
+type arrival struct {
+	d, kappa, back, noise float64
+	weak                  bool
+}
+
+// offer takes an arrival if it is earlier, but nothing weak over something that is not:
+// what comes too late is mended once more is known, what comes too early spreads.
+func (best *arrival) offer(a arrival) {
+	if a.weak == best.weak && a.d < best.d || best.weak && !a.weak {
+		*best = a
+	}
+}
 
 // sweep takes the vertices in the given order once, each from those before it.
-// Values of vertices yet to come, from an earlier sweep, are believed where they tell
-// that a corner casts a shadow, and nowhere else.
 func (w *front) sweep(order []int32) {
 	for v := range w.done {
 		w.done[v] = w.fixed[v]
@@ -93,7 +103,8 @@ func (w *front) sweep(order []int32) {
 }
 
 func (w *front) set(v int32, a arrival) {
-	w.d[v], w.kappa[v], w.back[v], w.noise[v] = a.d, a.kappa, a.back, a.noise
+	w.d[v], w.kappa[v], w.back[v] = a.d, a.kappa, a.back
+	w.noise[v], w.weak[v] = a.noise, a.weak
 }
 
 // mend takes up whatever a vertex later in the order could have told an earlier one:
@@ -106,7 +117,7 @@ func (w *front) mend(order []int32) (changed int) {
 			return false
 		}
 		a := w.arrive(v)
-		if !(a.d < w.d[v]-w.slack(v)) {
+		if !(a.d < w.d[v]-w.slack(v)) && !(w.weak[v] && !a.weak && a.d != w.d[v]) {
 			return false
 		}
 		w.set(v, a)
@@ -151,15 +162,15 @@ func (w *front) slack(v int32) float64 {
 
 // arrive continues the front to vertex v: the least value over its triangles.
 func (w *front) arrive(v int32) arrival {
-	best := arrival{d: math.Inf(1), back: math.NaN()}
+	best := arrival{d: math.Inf(1), back: math.NaN(), weak: true}
 	for _, h := range w.frame.out(v) {
 		h1, h2 := next(h), prev(h)
 		a, b := w.s.Vert[h1], w.s.Vert[h2]
 		if w.done[a] {
-			w.alongEdge(&best, v, a, w.s.Length[h], w.frame.at[h1]+w.frame.angle(h1), w.frame.at[h])
+			w.alongEdge(&best, v, a, h, w.frame.at[h1]+w.frame.wide[h1], w.frame.at[h])
 		}
 		if w.done[b] {
-			w.alongEdge(&best, v, b, w.s.Length[h2], w.frame.at[h2], w.frame.at[h]+w.frame.angle(h))
+			w.alongEdge(&best, v, b, h2, w.frame.at[h2], w.frame.at[h]+w.frame.wide[h])
 		}
 		if w.done[a] || w.done[b] {
 			w.throughEdge(&best, v, a, b, h)
@@ -173,16 +184,40 @@ func (w *front) arrive(v int32) arrival {
 // a source and behind a corner that casts a shadow (a saddle, a re-entrant rim): a path
 // that bends at q is real, so its length can be too long, but never too short, and is
 // kept only until something better comes.
-func (w *front) alongEdge(best *arrival, v, q int32, length, fromQ, fromV float64) {
-	value := w.d[q] + length
-	if value >= best.d {
+func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64) {
+	length := w.s.Length[edge]
+	a := arrival{d: w.d[q] + length, kappa: 1 / length, back: fromV}
+	if a.d >= best.d {
 		return
 	}
-	kappa := 1 / length
-	if !math.IsInf(w.kappa[q], 1) && w.straight(q, fromQ) {
-		kappa = w.kappa[q] / max(1+w.kappa[q]*length, 1e-9)
+	if !math.IsInf(w.kappa[q], 1) {
+		straight, shadow := w.ahead(q, edge, fromQ)
+		switch {
+		case straight:
+			a.kappa = w.kappa[q] / max(1+w.kappa[q]*length, 1e-9)
+		case !shadow:
+			a.weak = true
+		}
 	}
-	*best = arrival{value, w.bend(kappa, length, v), fromV, max(w.noise[q], w.frame.turning[v])}
+	a.kappa = w.bend(a.kappa, length, v)
+	a.noise = max(w.noise[q], w.frame.turning[v])
+	best.offer(a)
+}
+
+// ahead tells how an edge at q, which leaves at the given angle of q's frame, lies to
+// the ray that comes to q: straight on, as far as directions are known, or in the
+// shadow, more than a half turn away on either side.
+func (w *front) ahead(q, edge int32, angle float64) (straight, shadow bool) {
+	var left, right float64
+	if w.frame.kind[q] == odd {
+		left = w.frame.search(w.s, q, w.back[q], edge, false)
+		right = left
+	} else {
+		left, right = w.frame.turn(q, w.back[q], angle), w.frame.turn(q, angle, w.back[q])
+	}
+	tol := flatNoise + curvedNoise*w.noise[q]
+	const half = math.Pi * (1 - 1e-12)
+	return math.Abs(left-math.Pi) <= tol || math.Abs(right-math.Pi) <= tol, left >= half && right >= half
 }
 
 // bend corrects the curvature of a front that reached v over the given length on a
@@ -193,20 +228,9 @@ func (w *front) bend(kappa, length float64, v int32) float64 {
 	return kappa - w.frame.curvature[v]*length*(1-x+x*x/3)
 }
 
-// straight tells whether a ray that comes to q goes on in the direction at angle to
-// (in q's frame): the half turn lies on either side, within what is known of it.
-func (w *front) straight(q int32, to float64) bool {
-	if math.IsNaN(w.back[q]) {
-		return true // no frame: nothing speaks against it
-	}
-	tol := flatNoise + curvedNoise*w.noise[q]
-	left, right := w.frame.turn(q, w.back[q], to), w.frame.turn(q, to, w.back[q])
-	return math.Abs(left-math.Pi) <= tol || math.Abs(right-math.Pi) <= tol
-}
-
 // throughEdge takes the front through the edge ab of the face (v, a, b) of h: v→a.
 //
-// Where both ends know the front, and each foretells what the other has, they are
+// Where both ends know the front, and one foretells what the other has, they are
 // passed by the same front: its direction follows from d(a) and d(b), and its
 // curvature from both. Where they disagree, two fronts meet between a and b (the
 // cut locus) or one end lies in a shadow; then each goes on with what it knows alone.
@@ -220,83 +244,106 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 		return
 	}
 	if w.line != nil && w.line[h1] {
-		if tri.x >= 0 && tri.x <= length && tri.y < best.d {
-			*best = arrival{tri.y, w.bend(0, tri.y, v), w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v]}
+		if tri.x >= 0 && tri.x <= length {
+			best.offer(arrival{tri.y, w.bend(0, tri.y, v), w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], false})
 		}
 		return
 	}
-	da, db := w.d[a], w.d[b]
-	if min(da, db) >= best.d { // the front passes the edge where it is not before v
-		return
-	}
-	noise := max(w.noise[a], w.noise[b])
-	if !(w.done[a] && w.done[b]) {
-		noise = w.noise[a]
-		if w.done[b] {
-			noise = w.noise[b]
-		}
-	}
-	noise = max(noise, w.frame.turning[v])
-	tol := length*(flatNoise+curvedNoise*noise) + 1e-12*max(min(da, db), length)
-
 	var ra, rb ray
-	var knowsA, knowsB, agreesA, agreesB bool
-	if !math.IsInf(da, 1) {
-		ra, knowsA = w.rayAt(a, w.frame.turn(a, w.back[a], w.frame.at[h1]), false, tri)
-		agreesA = knowsA && math.Abs(ra.at(length, 0)-db) <= tol
+	var knowsA, knowsB bool
+	da, db, noise := math.Inf(1), math.Inf(1), w.frame.turning[v]
+	if w.done[a] {
+		da, noise = w.d[a], max(noise, w.noise[a])
+		ra, knowsA = w.rayAt(a, w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
 	}
-	if !math.IsInf(db, 1) {
-		rb, knowsB = w.rayAt(b, w.frame.turn(b, w.frame.at[h2]+w.frame.angle(h2), w.back[b]), true, tri)
-		agreesB = knowsB && math.Abs(rb.at(0, 0)-da) <= tol
+	if w.done[b] {
+		db, noise = w.d[b], max(noise, w.noise[b])
+		rb, knowsB = w.rayAt(b, w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
 	}
-	both := w.done[a] && w.done[b]
-	if both && math.IsNaN(w.back[a]) && math.IsNaN(w.back[b]) && !math.IsInf(w.kappa[a], 1) && !math.IsInf(w.kappa[b], 1) {
-		// No frame at either end (edges with more than two faces): believe the values.
-		ra, agreesA = ray{kappa: w.kappa[a], d: da}, true
-		rb, agreesB = ray{kappa: w.kappa[b], d: db, x: length}, true
+	if min(da, db) >= best.d && !best.weak {
+		return // the front passes this edge when it is past v
 	}
-	offer := func(r ray, share float64, s ray) {
-		x, ok := r.crossing(tri)
+	pass := passage{v, h, tri, noise, !w.done[a] || !w.done[b]}
+	if pass.weak {
+		if knowsA {
+			w.offer(best, pass, ra, ra)
+		}
+		if knowsB {
+			w.offer(best, pass, rb, rb)
+		}
+		return
+	}
+	tol := length*(flatNoise+curvedNoise*noise) + 1e-12*max(da, db)
+	tooA, tooB := math.NaN(), math.NaN() // what each end foretells in excess at the other
+	if knowsA {
+		tooA = ra.at(length, 0) - db
+	}
+	if knowsB {
+		tooB = rb.at(0, 0) - da
+	}
+	okA, okB := math.Abs(tooA) <= tol, math.Abs(tooB) <= tol
+	okA = okA && ra.aim(db, length)
+	okB = okB && rb.aim(da, -length)
+	switch {
+	case okA && okB:
+		w.offer(best, pass, ra, rb)
+	case okA:
+		w.offer(best, pass, ra, ra)
+	case okB:
+		w.offer(best, pass, rb, rb)
+	default:
+		if knowsA && !(tooA < 0 && ra.shaded(rb, knowsB, tri, 1, tol)) {
+			w.offer(best, pass, ra, ra)
+		}
+		if knowsB && !(tooB < 0 && rb.shaded(ra, knowsA, tri, -1, tol)) {
+			w.offer(best, pass, rb, rb)
+		}
+	}
+}
+
+// gap is the angle at q, counter-clockwise, between the ray back and an edge that the
+// front may enter a face through; from and to are those two in q's frame.
+func (w *front) gap(q, edge int32, from, to float64) float64 {
+	if w.frame.kind[q] == odd {
+		return w.frame.search(w.s, q, w.back[q], edge, true)
+	}
+	return w.frame.turn(q, from, to)
+}
+
+// A passage is one way that the front may come to v: through the far edge of the face
+// of h.
+type passage struct {
+	v, h  int32
+	tri   triangle
+	noise float64
+	weak  bool // one end of the edge is not known yet
+}
+
+// offer takes what the ray r foretells at v (or its mean with the ray s of the other
+// end) if it crosses the edge.
+func (w *front) offer(best *arrival, p passage, r, s ray) {
+	x, ok := r.crossing(p.tri)
+	if !ok {
+		return
+	}
+	value, kappa := r.reach(p.tri)
+	if s != r {
+		xs, ok := s.crossing(p.tri)
 		if !ok {
 			return
 		}
-		value, kappa := r.reach(tri)
-		if share < 1 {
-			xs, ok := s.crossing(tri)
-			if !ok {
-				return
-			}
-			x = (x + xs) / 2
-			share = 1 - min(max(x/length, 0), 1)
-			other, otherKappa := s.reach(tri)
-			value = share*value + (1-share)*other
-			kappa = share*kappa + (1-share)*otherKappa
-		}
-		if value < best.d {
-			run := math.Hypot(x-tri.x, tri.y)
-			*best = arrival{value, w.bend(kappa, run, v), w.frame.at[h] + tri.angleAtV(x), noise}
-		}
+		// Weighted by nearness to the crossing: each end knows the front best near itself.
+		x = (x + xs) / 2
+		share := 1 - min(max(x/p.tri.length, 0), 1)
+		other, otherKappa := s.reach(p.tri)
+		value = share*value + (1-share)*other
+		kappa = share*kappa + (1-share)*otherKappa
 	}
-	if both && (agreesA || agreesB) {
-		okA, okB := agreesA && ra.aim(db, length), agreesB && rb.aim(da, -length)
-		switch {
-		case okA && okB:
-			offer(ra, 0.5, rb)
-			return
-		case okA:
-			offer(ra, 1, ra)
-			return
-		case okB:
-			offer(rb, 1, rb)
-			return
-		}
+	if value >= best.d && !best.weak {
+		return
 	}
-	if knowsA && w.done[a] && !(ra.at(length, 0) < db-tol && !math.IsInf(db, 1) && ra.shaded(rb, knowsB, tri, 1)) {
-		offer(ra, 1, ra)
-	}
-	if knowsB && w.done[b] && !(rb.at(0, 0) < da-tol && !math.IsInf(da, 1) && rb.shaded(ra, knowsA, tri, -1)) {
-		offer(rb, 1, rb)
-	}
+	run := math.Hypot(x-p.tri.x, p.tri.y)
+	best.offer(arrival{value, w.bend(kappa, run, p.v), w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, p.weak})
 }
 
 // triangle is a face laid into the plane: a = (0, 0), b = (length, 0), v = (x, y).
@@ -311,19 +358,19 @@ func (t triangle) angleAtV(x float64) float64 {
 // passed (x, 0) at d with curvature kappa, coming from direction (ex, ey), ey < 0.
 type ray struct{ d, kappa, x, ex, ey float64 }
 
-// rayAt lays the front at q into the frame of a face that it enters through an edge.
-// gap is the angle at q between the ray back and that edge, on the far side. It is
-// not known where the ray does not come through the edge, and at sources.
-func (w *front) rayAt(q int32, gap float64, atB bool, t triangle) (r ray, known bool) {
+// rayAt lays the front at q, which is at (x, 0), into the frame of a face that it
+// enters through an edge. gap is the angle at q between the ray back and that edge, on
+// the far side. It is not known where the ray does not come through the edge, and at
+// sources.
+func (w *front) rayAt(q int32, gap, x float64) (r ray, known bool) {
 	if !(gap < math.Pi) || math.IsInf(w.kappa[q], 1) { // NaN: no direction
 		return ray{}, false
 	}
 	sin, cos := math.Sincos(gap)
-	r = ray{d: w.d[q], kappa: w.kappa[q], ex: cos, ey: -sin}
-	if atB {
-		r.x, r.ex = t.length, -cos
+	if x > 0 {
+		cos = -cos
 	}
-	return r, true
+	return ray{d: w.d[q], kappa: w.kappa[q], x: x, ex: cos, ey: -sin}, true
 }
 
 // at is the distance that the ray foretells at (x, y).
@@ -363,17 +410,18 @@ func (r ray) reach(t triangle) (value, kappa float64) {
 	return value, r.kappa / max(rho, 1e-9)
 }
 
-// shaded tells whether v lies in the shadow that ends between the ends of the edge.
-// r foretells less than the other end has, so something stands between: the centre of
-// the other front, if that is known, and rays are cut off there. side is 1 if the
-// other end is b. Without a known centre half of the edge counts as lit.
-func (r ray) shaded(other ray, known bool, t triangle, side float64) bool {
+// shaded tells whether v lies in a shadow that ends between the ends of the edge: r
+// foretells less than the other end has, so something stands between. If that is the
+// centre of the other front (a corner that it turned round), rays of r are cut off
+// there, on the side of the other end: side is 1 if that is b. If it is not, several
+// corners stand between, and nothing of r is believed beyond its own end.
+func (r ray) shaded(other ray, known bool, t triangle, side, tol float64) bool {
 	if !known || !(other.kappa > 0) {
-		x, _ := r.crossing(t)
-		return math.Abs(x-r.x) > t.length/2
+		return true
 	}
-	cx, cy := other.x+other.ex/other.kappa, other.ey/other.kappa // the other front's centre
-	// Direction of the ray to v, and from v to that centre.
+	radius := 1 / other.kappa
+	cx, cy := other.x+other.ex*radius, other.ey*radius
+	// Direction of the ray to v, and from v to the corner.
 	dx, dy := r.kappa*(t.x-r.x)-r.ex, r.kappa*t.y-r.ey
 	return side*(dx*(cy-t.y)-dy*(cx-t.x)) > 1e-12*(math.Abs(dx)+math.Abs(dy))*(math.Abs(cx-t.x)+math.Abs(cy-t.y))
 }

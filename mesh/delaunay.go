@@ -13,70 +13,109 @@ const weightFloor = 1e-10
 // and whose weight is negative are split at the foot of a height. Both leave the
 // metric as it is. At most budget edges are split; what is left is in Unmended.
 func (s *Surface) Delaunay(budget int) {
-	queue := make([]int32, 0, len(s.Vert))
-	queued := make([]bool, len(s.Vert))
-	push := func(h int32) {
-		for int(h) >= len(queued) {
-			queued = append(queued, false)
-		}
-		if !queued[h] {
-			queued[h] = true
-			queue = append(queue, h)
-		}
-	}
+	l := s.newLegaliser(budget)
 	for h := int32(len(s.Vert)) - 1; h >= 0; h-- {
-		if s.Glue[h] >= h { // one halfedge of each edge with two faces; all of stranger ones do no harm
-			push(h)
+		if s.Glue[h] >= h { // one halfedge of each edge with two faces; more of stranger ones do no harm
+			l.push(h)
 		}
 	}
-	// Each flip lowers the Dirichlet energy of every function, so flips end; rounding
-	// could still undo that on a face without area: the bound makes sure.
-	mostFlips := 200 * (len(s.Vert) + 1000)
 	s.Unmended = 0
-	for len(queue) > 0 {
-		h := queue[len(queue)-1]
-		queue = queue[:len(queue)-1]
-		queued[h] = false
+	l.run()
+	for f := range s.parent {
+		s.parent[f] = -1
+	}
+}
+
+// A legaliser makes edges Delaunay, and whatever edges that upsets.
+type legaliser struct {
+	s         *Surface
+	queue     []int32
+	queued    []bool // by halfedge
+	mostFlips int
+	budget    int           // edges that may be split
+	touched   func(f int32) // told of every face that a flip or split changed; or nil
+}
+
+func (s *Surface) newLegaliser(budget int) *legaliser {
+	return &legaliser{
+		s: s, queue: make([]int32, 0, len(s.Vert)), queued: make([]bool, len(s.Vert)),
+		// Each flip lowers the Dirichlet energy of every function, so flips end; rounding
+		// could undo that on a face without area: the bound makes sure.
+		mostFlips: s.Flips + 200*(len(s.Vert)+1000),
+		budget:    budget,
+	}
+}
+
+func (l *legaliser) push(h int32) {
+	for int(h) >= len(l.queued) {
+		l.queued = append(l.queued, false)
+	}
+	if !l.queued[h] {
+		l.queued[h] = true
+		l.queue = append(l.queue, h)
+	}
+}
+
+func (l *legaliser) touch(f int32) {
+	if l.touched != nil {
+		l.touched(f)
+	}
+}
+
+func (l *legaliser) run() {
+	s := l.s
+	for len(l.queue) > 0 {
+		h := l.queue[len(l.queue)-1]
+		l.queue = l.queue[:len(l.queue)-1]
+		l.queued[h] = false
 		if !s.negative(h) {
 			continue
 		}
-		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.Flips < mostFlips {
+		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.Flips < l.mostFlips {
 			s.flip(h, g)
 			s.Flips++
+			l.touch(h / 3)
+			l.touch(g / 3)
 			for _, k := range [4]int32{h, prev(h), g, prev(g)} {
-				push(k)
+				l.push(k)
 			}
 			continue
 		}
-		if s.Splits >= budget {
+		if s.Splits >= l.budget {
 			s.Unmended++
 			continue
 		}
-		obtuse, at := h, 0.0
+		obtuse := h
 		for g := s.Glue[h]; g != h; g = s.Glue[g] {
 			if s.cot[g] < s.cot[obtuse] {
 				obtuse = g
 			}
 		}
-		at, _ = s.apex(obtuse)
-		first := int32(len(s.Vert))
-		s.splitEdge(obtuse, at)
+		foot, _ := s.apex(obtuse)
+		l.split(obtuse, foot)
 		s.Splits++
-		for g := obtuse; ; {
-			f := g / 3
-			for k := 3 * f; k < 3*f+3; k++ {
-				push(k)
-			}
-			if g = s.Glue[g]; g == obtuse {
-				break
-			}
-		}
-		for k := first; k < int32(len(s.Vert)); k++ {
-			push(k)
+	}
+}
+
+// split puts a vertex on the edge of h and has all edges around it looked at.
+func (l *legaliser) split(h int32, at float64) {
+	s := l.s
+	grown := int32(len(s.Vert))
+	s.splitEdge(h, at)
+	around := func(f int32) {
+		l.touch(f)
+		for k := 3 * f; k < 3*f+3; k++ {
+			l.push(k)
 		}
 	}
-	for f := range s.parent {
-		s.parent[f] = -1
+	for g := h; ; {
+		around(g / 3)
+		if g = s.Glue[g]; g == h {
+			break
+		}
+	}
+	for f := grown / 3; f < int32(len(s.Vert)/3); f++ {
+		around(f)
 	}
 }
 

@@ -1,0 +1,107 @@
+package mesh
+
+import (
+	"container/heap"
+	"fmt"
+	"math"
+)
+
+// A BudgetError is a refinement that needs more vertices than it may have.
+type BudgetError struct {
+	MaxEdge float64 // the edge length asked for
+	Needed  int     // vertices that it would take, about
+	Budget  int
+}
+
+func (e *BudgetError) Error() string {
+	return fmt.Sprintf("edges of at most %g need about %d more vertices; the budget is %d (allow longer edges)", e.MaxEdge, e.Needed, e.Budget)
+}
+
+// Resolve adds vertices until no edge is longer than maxEdge, longest first, each at
+// the middle of its edge, and keeps the triangulation Delaunay on the way. Call it
+// after Delaunay. The surface and its metric stay what they are. Unlike a refinement
+// of the mesh it works on the flipped edges, so slivers that lie in one plane (or
+// round a crease) cost nothing: their vertices are joined well before any is added.
+// The error is a *BudgetError. O(k log k) for k new vertices.
+func (s *Surface) Resolve(maxEdge float64, budget int) error {
+	if needed := s.needed(maxEdge); needed > float64(budget) {
+		return &BudgetError{MaxEdge: maxEdge, Needed: int(min(needed, math.MaxInt32)), Budget: budget}
+	}
+	before := s.NumVertices
+	var long edgeHeap
+	l := s.newLegaliser(math.MaxInt)
+	look := func(f int32) {
+		for h := 3 * f; h < 3*f+3; h++ {
+			if s.Length[h] > maxEdge {
+				heap.Push(&long, overlong{s.Length[h], h})
+			}
+		}
+	}
+	l.touched = look
+	for f := range int32(s.NumFaces()) {
+		look(f)
+	}
+	for len(long) > 0 {
+		e := heap.Pop(&long).(overlong)
+		if s.Length[e.h] != e.length {
+			continue // flipped or split since
+		}
+		l.split(e.h, e.length/2)
+		l.run()
+		if s.NumVertices-before > 2*budget {
+			return &BudgetError{MaxEdge: maxEdge, Needed: s.NumVertices - before, Budget: budget}
+		}
+	}
+	return nil
+}
+
+// needed is about how many vertices Resolve will add: as many as a mesh of equal
+// triangles has in the faces that are too large, and those on long edges of slivers.
+func (s *Surface) needed(maxEdge float64) float64 {
+	sum := 0.0
+	for f := range int32(s.NumFaces()) {
+		longest := s.Length[s.longest(f)]
+		if longest > maxEdge {
+			sum += max(s.Area(f)/(maxEdge*maxEdge), (longest/maxEdge-1)/4)
+		}
+	}
+	return sum
+}
+
+// ResolutionFor is the edge length that gives a surface of this area about as many
+// vertices as it has, or least if it has fewer: edges longer than that stand out.
+func (s *Surface) ResolutionFor(least int) float64 {
+	area, used := 0.0, 0
+	for f := range int32(s.NumFaces()) {
+		area += s.Area(f)
+	}
+	for _, none := range s.NoValue {
+		if !none {
+			used++
+		}
+	}
+	// Equal triangles with edge L: area/n = L²·√3/2. Even meshes of a scan have edges
+	// of up to twice the mean.
+	return 2.3 * math.Sqrt(area/float64(max(used, least)))
+}
+
+type overlong struct {
+	length float64
+	h      int32
+}
+
+// edgeHeap is a heap, longest first, equal ones by number.
+type edgeHeap []overlong
+
+func (q edgeHeap) Len() int { return len(q) }
+func (q edgeHeap) Less(i, j int) bool {
+	return q[i].length > q[j].length || q[i].length == q[j].length && q[i].h < q[j].h
+}
+func (q edgeHeap) Swap(i, j int) { q[i], q[j] = q[j], q[i] }
+func (q *edgeHeap) Push(x any)   { *q = append(*q, x.(overlong)) }
+func (q *edgeHeap) Pop() any {
+	last := len(*q) - 1
+	e := (*q)[last]
+	*q = (*q)[:last]
+	return e
+}
