@@ -81,6 +81,12 @@ func TestVectorAssemblyMatchesGo(t *testing.T) {
 			solveRightGo(x, l, blocks, 8)
 			solveRightAVX512(&got[shift+4], &l[0], blocks)
 			sameBits(t, got, want, "SolveRight blocks=%d shift=%d", blocks, shift)
+
+			want, x = fenced(rng, 64, shift, 1)
+			got = slices.Clone(want)
+			solveRightTransGo(x, l, 8)
+			solveRightTransAVX512(&got[shift+4], &l[0])
+			sameBits(t, got, want, "SolveRightTrans shift=%d", shift)
 		}
 	}
 }

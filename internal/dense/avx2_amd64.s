@@ -19,9 +19,12 @@ TEXT ·subtractAVX2(SB), NOSPLIT, $80-8
 	MOVQ Product_A(R9), SI
 	MOVQ Product_Blocks(R9), CX
 	MOVQ CX, blocks-24(SP)
-	MOVQ Product_Shrink(R9), CX
+	MOVQ Product_AShrink(R9), CX
 	SHLQ $3, CX
-	MOVQ CX, shrink-32(SP)
+	MOVQ CX, shrinkA-32(SP)
+	MOVQ Product_BShrink(R9), CX
+	SHLQ $3, CX
+	MOVQ CX, shrinkB-64(SP)
 	MOVQ Product_BCol(R9), R14
 	SHLQ $3, R14
 	LEAQ (R14)(R14*2), R15
@@ -81,8 +84,8 @@ unit:
 	MOVQ walkB-56(SP), R12
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  panel
 	VMOVUPD Y0, 0(R10)
@@ -121,8 +124,8 @@ unit1:
 	MOVQ walkB-56(SP), R12
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  panel1
 	VMOVUPD Y0, 0(R10)

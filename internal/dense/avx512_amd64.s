@@ -68,7 +68,7 @@
 // DI C, SI A, R9 and R10 steps of C and A; R11 and R12 walk through A and B, DX four columns
 // after R12; R8 step of k in B, R14 and R15 one and three steps of j in B; AX panels left,
 // CX columns left in the panel, R13 and BX hops left.
-TEXT ·subtractAVX512(SB), NOSPLIT, $64-8
+TEXT ·subtractAVX512(SB), NOSPLIT, $72-8
 	FLUSH_SUBNORMALS(mxcsr-8(SP), flush-16(SP))
 	MOVQ u+0(FP), BX
 
@@ -109,9 +109,12 @@ masked:
 	SHLQ $3, R10
 	MOVQ Product_Blocks(BX), CX
 	MOVQ CX, blocks-24(SP)
-	MOVQ Product_Shrink(BX), CX
+	MOVQ Product_AShrink(BX), CX
 	SHLQ $3, CX
-	MOVQ CX, shrink-32(SP)
+	MOVQ CX, shrinkA-32(SP)
+	MOVQ Product_BShrink(BX), CX
+	SHLQ $3, CX
+	MOVQ CX, shrinkB-64(SP)
 	MOVQ Product_Width(BX), CX
 	MOVQ CX, width-40(SP)
 	MOVQ Product_BCol(BX), R14
@@ -160,8 +163,8 @@ whole:
 	UNIT(448)
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  whole
 	JMP  store
@@ -192,8 +195,8 @@ unit:
 	MOVQ walkB-56(SP), R12
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  panel
 
@@ -227,8 +230,8 @@ whole1:
 	UNIT1(448)
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  whole1
 	JMP  store1
@@ -258,8 +261,8 @@ unit1:
 	MOVQ walkB-56(SP), R12
 	ADDQ R13, R11
 	ADDQ BX, R12
-	SUBQ shrink-32(SP), R13
-	SUBQ shrink-32(SP), BX
+	SUBQ shrinkA-32(SP), R13
+	SUBQ shrinkB-64(SP), BX
 	DECQ AX
 	JNZ  panel1
 
@@ -367,6 +370,73 @@ alone:
 	ADDQ $1024, DI
 	SUBQ $2, CX
 	JGT  pair
+	LDMXCSR mxcsr-8(SP)
+	VZEROUPPER
+	RET
+
+#define SCALE1(o, z) \
+	VMULPD.BCST o(SI), z, z
+
+#define TERM1(o, zk, z) \
+	VFNMADD231PD.BCST o(SI), zk, z
+
+// func solveRightTransAVX512(x, l *float64)
+TEXT ·solveRightTransAVX512(SB), NOSPLIT, $16-16
+	FLUSH_SUBNORMALS(mxcsr-8(SP), flush-16(SP))
+	MOVQ x+0(FP), DI
+	MOVQ l+8(FP), SI
+	VMOVUPD 0(DI), Z0
+	VMOVUPD 64(DI), Z1
+	VMOVUPD 128(DI), Z2
+	VMOVUPD 192(DI), Z3
+	VMOVUPD 256(DI), Z4
+	VMOVUPD 320(DI), Z5
+	VMOVUPD 384(DI), Z6
+	VMOVUPD 448(DI), Z7
+	SCALE1(504, Z7)
+	TERM1(440, Z7, Z6)
+	TERM1(376, Z7, Z5)
+	TERM1(312, Z7, Z4)
+	TERM1(248, Z7, Z3)
+	TERM1(184, Z7, Z2)
+	TERM1(120, Z7, Z1)
+	TERM1(56, Z7, Z0)
+	SCALE1(432, Z6)
+	TERM1(368, Z6, Z5)
+	TERM1(304, Z6, Z4)
+	TERM1(240, Z6, Z3)
+	TERM1(176, Z6, Z2)
+	TERM1(112, Z6, Z1)
+	TERM1(48, Z6, Z0)
+	SCALE1(360, Z5)
+	TERM1(296, Z5, Z4)
+	TERM1(232, Z5, Z3)
+	TERM1(168, Z5, Z2)
+	TERM1(104, Z5, Z1)
+	TERM1(40, Z5, Z0)
+	SCALE1(288, Z4)
+	TERM1(224, Z4, Z3)
+	TERM1(160, Z4, Z2)
+	TERM1(96, Z4, Z1)
+	TERM1(32, Z4, Z0)
+	SCALE1(216, Z3)
+	TERM1(152, Z3, Z2)
+	TERM1(88, Z3, Z1)
+	TERM1(24, Z3, Z0)
+	SCALE1(144, Z2)
+	TERM1(80, Z2, Z1)
+	TERM1(16, Z2, Z0)
+	SCALE1(72, Z1)
+	TERM1(8, Z1, Z0)
+	SCALE1(0, Z0)
+	VMOVUPD Z0, 0(DI)
+	VMOVUPD Z1, 64(DI)
+	VMOVUPD Z2, 128(DI)
+	VMOVUPD Z3, 192(DI)
+	VMOVUPD Z4, 256(DI)
+	VMOVUPD Z5, 320(DI)
+	VMOVUPD Z6, 384(DI)
+	VMOVUPD Z7, 448(DI)
 	LDMXCSR mxcsr-8(SP)
 	VZEROUPPER
 	RET

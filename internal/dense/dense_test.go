@@ -35,7 +35,8 @@ func sameBits(t *testing.T, got, want []float64, format string, args ...any) {
 type layout struct {
 	name         string
 	bCol, bRow   int
-	shrink       int
+	aShrink      int
+	bShrink      int
 	panels       []int
 	widths       []int
 	aHop, bHop   int
@@ -43,8 +44,10 @@ type layout struct {
 }
 
 var layouts = []layout{
-	{name: "panels of a factor", bCol: 1, bRow: 8, shrink: 64, panels: []int{1, 2, 5}, widths: []int{8}, aHop: 64 * 12, bHop: 64 * 12,
+	{name: "panels of a factor", bCol: 1, bRow: 8, aShrink: 64, bShrink: 64, panels: []int{1, 2, 5}, widths: []int{8}, aHop: 64 * 12, bHop: 64 * 12,
 		aStep: func(w, _ int) int { return 64 }, cStep: func(_, cols int) int { return 8 * cols }},
+	{name: "panels of a factor times right sides", bCol: 1, bRow: 8, bShrink: 64, panels: []int{1, 4}, widths: []int{8}, aHop: 64, bHop: 64 * 12,
+		aStep: func(int, int) int { return 320 }, cStep: func(int, int) int { return 320 }},
 	{name: "narrow last panel", bCol: 1, bRow: 8, panels: []int{1}, widths: []int{1, 2, 3, 4, 5, 6, 7}, aHop: 0, bHop: 0,
 		aStep: func(w, _ int) int { return 8 * w }, cStep: func(_, cols int) int { return 8 * cols }},
 	{name: "transposed panel", bCol: 8, bRow: 1, panels: []int{1, 3}, widths: []int{8, 3}, aHop: 128, bHop: 64,
@@ -60,10 +63,10 @@ func eachProduct(t *testing.T, check func(name string, u Product, wholeC []float
 					for blocks := 1; blocks <= 5; blocks++ {
 						for shift := range 3 {
 							u := Product{Blocks: blocks, Cols: cols, CStep: l.cStep(width, cols), AStep: l.aStep(width, cols), Panels: panels, Width: width,
-								AHop: l.aHop, BHop: l.bHop, Shrink: l.shrink, BCol: l.bCol, BRow: l.bRow}
-							hops := (panels - 1) * (panels - 2) / 2 * l.shrink
-							_, u.A = fenced(rng, (blocks-1)*u.AStep+(panels-1)*u.AHop-hops+8*width, shift, math.NaN())
-							_, u.B = fenced(rng, (panels-1)*u.BHop-hops+7*u.BCol+(width-1)*u.BRow+1, shift, math.NaN())
+								AHop: l.aHop, BHop: l.bHop, AShrink: l.aShrink, BShrink: l.bShrink, BCol: l.bCol, BRow: l.bRow}
+							shrinks := (panels - 1) * (panels - 2) / 2
+							_, u.A = fenced(rng, (blocks-1)*u.AStep+(panels-1)*u.AHop-shrinks*u.AShrink+8*width, shift, math.NaN())
+							_, u.B = fenced(rng, (panels-1)*u.BHop-shrinks*u.BShrink+7*u.BCol+(width-1)*u.BRow+1, shift, math.NaN())
 							var whole []float64
 							whole, u.C = fenced(rng, (blocks-1)*u.CStep+8*cols, shift, 1)
 							check(l.name, u, whole)
@@ -88,8 +91,8 @@ func TestProductIsTheSumItStandsFor(t *testing.T) {
 						for k := range u.Width {
 							s = subMul(s, u.A[a+8*k+i], u.B[b+j*u.BCol+k*u.BRow])
 						}
-						a += u.AHop - p*u.Shrink
-						b += u.BHop - p*u.Shrink
+						a += u.AHop - p*u.AShrink
+						b += u.BHop - p*u.BShrink
 					}
 					want[g*u.CStep+8*j+i] = s
 				}
@@ -137,7 +140,7 @@ func triangle(rng *rand.Rand, n int) []float64 {
 	return d
 }
 
-// L Lᵀ must give the matrix back, and X L⁻ᵀ times Lᵀ must give X back: within 8·ε times the
+// L Lᵀ must give the matrix back, X L⁻ᵀ times Lᵀ and X L⁻¹ times L must give X back: within 8·ε times the
 // largest entry, there being at most eight products in a sum.
 func TestTrianglesInvert(t *testing.T) {
 	rng := rand.New(rand.NewPCG(3, 4))
@@ -184,6 +187,19 @@ func TestTrianglesInvert(t *testing.T) {
 					if math.Abs(s-x[8*n*g+8*j+i]) > 4*tol {
 						t.Errorf("n=%d: (YLᵀ)(%d,%d) = %v, want %v", n, 8*g+i, j, s, x[8*n*g+8*j+i])
 					}
+				}
+			}
+		}
+		y = slices.Clone(x[:8*n])
+		SolveRightTrans(y, l, n)
+		for i := range 8 {
+			for j := range n {
+				s := 0.0
+				for k := j; k < n; k++ {
+					s += y[8*k+i] * at(k, j)
+				}
+				if math.Abs(s-x[8*j+i]) > 4*tol {
+					t.Errorf("n=%d: (YL)(%d,%d) = %v, want %v", n, i, j, s, x[8*j+i])
 				}
 			}
 		}

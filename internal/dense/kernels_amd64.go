@@ -25,6 +25,11 @@ func subtractAVX2(u *Product)
 //go:noescape
 func solveRightAVX512(x, l *float64, blocks int)
 
+// solveRightTransAVX512 is solveRightTransGo with n = 8. Results below 2^-1022 become zero.
+//
+//go:noescape
+func solveRightTransAVX512(x, l *float64)
+
 //go:noescape
 func mulSubAVX512(y, p, x *float64, blocks, n int)
 

@@ -5,7 +5,7 @@ package dense
 //	C(i,j) -= Σ A(i,k) B(j,k),  k ascending, each term fused.
 //
 // The inner index runs over Panels pieces of Width columns each; from one piece to the
-// next A and B move on by Hop, a distance that shrinks as the pieces go on, because the
+// next A and B move on by a hop that may shrink from piece to piece, because the
 // panels of a factor's lower triangle get shorter to the right. All lengths are in values.
 type Product struct {
 	C, A, B []float64
@@ -15,11 +15,12 @@ type Product struct {
 	CStep  int // from a block of C to the next one below
 	AStep  int // from a block of A to the next one below
 
-	Panels int // pieces of the inner index, at least 1
-	Width  int // length of each piece, at least 1
-	AHop   int // from a piece of A to the next
-	BHop   int // from a piece of B to the next
-	Shrink int // what both hops lose at each step
+	Panels  int // pieces of the inner index, at least 1
+	Width   int // length of each piece, at least 1
+	AHop    int // from a piece of A to the next
+	BHop    int // from a piece of B to the next
+	AShrink int // what AHop loses at each step
+	BShrink int // what BHop loses at each step
 
 	BCol int // B(j,k) is B[j·BCol + k·BRow] within a piece
 	BRow int
@@ -28,9 +29,9 @@ type Product struct {
 // Subtract carries out the product. C must not overlap A or B. All eight columns j of B are
 // read, whatever Cols is, and have to lie within its slice. It panics if a slice is too short.
 func (u *Product) Subtract() {
-	hops := (u.Panels - 1) * (u.Panels - 2) / 2 * u.Shrink
-	endA := (u.Blocks-1)*u.AStep + (u.Panels-1)*u.AHop - hops + 8*u.Width
-	endB := (u.Panels-1)*u.BHop - hops + 7*u.BCol + (u.Width-1)*u.BRow + 1
+	shrinks := (u.Panels - 1) * (u.Panels - 2) / 2
+	endA := (u.Blocks-1)*u.AStep + (u.Panels-1)*u.AHop - shrinks*u.AShrink + 8*u.Width
+	endB := (u.Panels-1)*u.BHop - shrinks*u.BShrink + 7*u.BCol + (u.Width-1)*u.BRow + 1
 	endC := (u.Blocks-1)*u.CStep + 8*u.Cols
 	if u.Blocks < 1 || uint(u.Cols-1) > 7 || u.Panels < 1 || u.Width < 1 ||
 		endA > len(u.A) || endB > len(u.B) || endC > len(u.C) {
@@ -76,7 +77,7 @@ func subtractGo(u *Product) {
 						bk += u.BRow
 					}
 					a, b = a+aHop, b+bHop
-					aHop, bHop = aHop-u.Shrink, bHop-u.Shrink
+					aHop, bHop = aHop-u.AShrink, bHop-u.BShrink
 				}
 				c0[0], c0[1], c0[2], c0[3] = s0, s1, s2, s3
 				if second > j {

@@ -63,3 +63,31 @@ func solveRightGo(x, l []float64, blocks, n int) {
 		}
 	}
 }
+
+// SolveRightTrans overwrites x, one block of n columns, by x L⁻¹, with l as for SolveRight.
+func SolveRightTrans(x, l []float64, n int) {
+	if uint(n-1) > 7 || len(x) < 8*n || len(l) < 8*n {
+		panic("dense: SolveRightTrans: slice too short")
+	}
+	if useAVX512 && n == 8 {
+		solveRightTransAVX512(&x[0], &l[0])
+		return
+	}
+	solveRightTransGo(x, l, n)
+}
+
+func solveRightTransGo(x, l []float64, n int) {
+	for k := n - 1; k >= 0; k-- {
+		xk := (*[8]float64)(x[8*k:])
+		r := l[8*k+k]
+		for i := range 8 {
+			xk[i] *= r
+		}
+		for j := range k {
+			xj, m := (*[8]float64)(x[8*j:]), l[8*j+k]
+			for i := range 8 {
+				xj[i] = subMul(xj[i], xk[i], m)
+			}
+		}
+	}
+}

@@ -35,8 +35,8 @@ type Analysis struct {
 	relative   []int32     // the same rows as places in the parent's front
 	plan       *plan
 	stats      Stats
-	workspaces sync.Pool // of *workspace
-	vectors    sync.Pool // of *vectors
+	workspaces sync.Pool    // of *workspace
+	vectors    [3]sync.Pool // of *vectors, for 1, 8 and 16 right sides
 }
 
 // Stats returns counts of the factor to come.
@@ -83,7 +83,7 @@ func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 		a.stats.StoredValues += factorSize(int64(node.w), int64(node.m))
 	}
 	a.plan = makePlan(a.nodes, workers)
-	a.stats.PeakBytes = 8*(a.stats.StoredValues+a.plan.values()) + 8*below + 16*int64(n)
+	a.stats.PeakBytes = 8*a.stats.StoredValues + a.plan.bytes(n) + 8*below + 16*int64(n)
 	if opt.MaxBytes > 0 && a.stats.PeakBytes > opt.MaxBytes {
 		return nil, &SizeError{n, a.stats.PeakBytes, opt.MaxBytes}
 	}

@@ -1,9 +1,6 @@
 package sparse
 
-import (
-	"slices"
-	"sort"
-)
+import "sort"
 
 // assemble fills panels [p0, p1) of the front of supernode s: zeros, the entries of the matrix,
 // then the children's update matrices, last child first.
@@ -18,7 +15,7 @@ func (f *Factor) assemble(fr *front, s int32, ln *lane, p0, p1 int) {
 			to, _ = fr.factorPanel(p1)
 		}
 		clear(fr.l[from:to])
-		f.scatter(fr, node, 8*p0, min(8*p1, fr.w))
+		f.scatter(fr, node, ln.place, 8*p0, min(8*p1, fr.w))
 	}
 	if q := max(p0, fr.w/8); q < p1 && fr.w < fr.m {
 		from, _ := fr.updatePanel(q)
@@ -48,35 +45,35 @@ func (f *Factor) assemble(fr *front, s int32, ln *lane, p0, p1 int) {
 	}
 }
 
-// scatter adds the entries of the matrix in columns [c0, c1) of the front.
-func (f *Factor) scatter(fr *front, node *supernode, c0, c1 int) {
+// scatter adds the entries of the matrix in columns [c0, c1) of the front; place[i] is where row i, below the
+// columns, comes in it.
+func (f *Factor) scatter(fr *front, node *supernode, place []int32, c0, c1 int) {
 	a, m, held := f.a, f.matrix, f.held
-	below := a.rows[node.rows : node.rows+int64(node.m-node.w)]
+	end := node.first + node.w
 	for c := c0; c < c1; c++ {
 		k := node.first + int32(c)
 		v := a.perm[k]
 		array, base, step := fr.column(c)
+		column := array[base+c/8*step:] // from the block on the diagonal
+		step8 := int32(step)
+		block := int32(c / 8)
 		if held != nil && held[v] {
-			array[base+c/8*step+c%8] = 1
+			column[c%8] = 1
 			continue
 		}
 		scale := f.scale[k]
-		array[base+c/8*step+c%8] = m.Diag[v] * scale * scale
-		for q := m.Ptr[v]; q < m.Ptr[v+1]; q++ {
-			w := m.Adj[q]
+		column[c%8] = m.Diag[v] * scale * scale
+		adj, off := m.Adj[m.Ptr[v]:m.Ptr[v+1]], m.Off[m.Ptr[v]:m.Ptr[v+1]]
+		for q, w := range adj {
 			i := a.inverse[w]
 			if i <= k || held != nil && held[w] {
 				continue
 			}
-			r := int(i - node.first)
-			if r >= fr.w {
-				at, found := slices.BinarySearch(below, i)
-				if !found {
-					panic("sparse: Factorize: matrix has an entry outside the pattern that was analysed")
-				}
-				r = fr.w + at
+			r := i - node.first
+			if i >= end {
+				r = place[i]
 			}
-			array[base+r/8*step+r%8] += m.Off[q] * scale * f.scale[i]
+			column[(r>>3-block)*step8+r&7] += off[q] * scale * f.scale[i]
 		}
 	}
 }

@@ -123,7 +123,7 @@ func (f *front) subtract(p, q0, q1, g0, g1 int) {
 	u := dense.Product{
 		C: f.l[start+(g0-p)*8*cols:], A: f.l[left+(g0-q0)*64:], B: f.l[left+(p-q0)*64:],
 		Blocks: g1 - g0, Cols: cols, CStep: 8 * cols, AStep: 64,
-		Panels: q1 - q0, Width: 8, AHop: hop, BHop: hop, Shrink: 64, BCol: 1, BRow: 8,
+		Panels: q1 - q0, Width: 8, AHop: hop, BHop: hop, AShrink: 64, BShrink: 64, BCol: 1, BRow: 8,
 	}
 	u.Subtract()
 }
@@ -168,7 +168,7 @@ func (f *front) subtractFromUpdate(p0, p1, g0, g1 int) {
 				u := dense.Product{
 					C: f.u[start+(g-p)*8*cols:], A: f.l[left+(g-q)*64:], B: f.l[left+(p-q)*64+max(f.w-8*p, 0):],
 					Blocks: end - g, Cols: cols, CStep: 8 * cols, AStep: 64,
-					Panels: to - q, Width: 8, AHop: hop, BHop: hop, Shrink: 64, BCol: 1, BRow: 8,
+					Panels: to - q, Width: 8, AHop: hop, BHop: hop, AShrink: 64, BShrink: 64, BCol: 1, BRow: 8,
 				}
 				u.Subtract()
 			}

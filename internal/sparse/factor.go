@@ -3,6 +3,7 @@ package sparse
 import (
 	"context"
 	"math"
+	"slices"
 	"sync/atomic"
 )
 
@@ -24,9 +25,10 @@ type workspace struct {
 	lanes []lane    // one for each goroutine, then one for the top
 }
 
-// lane is what one goroutine works with: two stacks of update matrices.
+// lane is what one goroutine works with.
 type lane struct {
-	stack [2][]float64
+	place []int32      // of the rows below the columns of the present front, by row of the matrix
+	stack [2][]float64 // of update matrices
 	fill  [2]int64
 }
 
@@ -38,6 +40,7 @@ func (a *Analysis) NewFactor() *Factor {
 func (a *Analysis) newWorkspace() *workspace {
 	w := &workspace{slab: make([]float64, a.plan.slab), lanes: make([]lane, a.plan.workers+1)}
 	for i := range w.lanes {
+		w.lanes[i].place = make([]int32, len(a.perm))
 		for d := range 2 {
 			size := a.plan.stack[d]
 			if i == a.plan.workers {
@@ -59,7 +62,8 @@ func (a *Analysis) newWorkspace() *workspace {
 func (f *Factor) Factorize(ctx context.Context, m *Matrix, held []bool) error {
 	a := f.a
 	n := len(a.perm)
-	if m.Dim() != n || len(m.Adj) != len(a.pattern.Adj) || len(m.Diag) != n || len(m.Off) != len(m.Adj) || held != nil && len(held) != n {
+	if p := a.pattern; len(m.Diag) != n || len(m.Off) != len(p.Adj) || held != nil && len(held) != n ||
+		m.Pattern != p && !(slices.Equal(m.Ptr, p.Ptr) && slices.Equal(m.Adj, p.Adj)) {
 		panic("sparse: Factorize: matrix is not on the pattern that was analysed")
 	}
 	f.matrix, f.held = nil, held
@@ -162,6 +166,9 @@ func (f *Factor) factorFront(ln *lane, s int32, workers int) failure {
 		fr.u = f.work.slab[slot : slot+size]
 	} else {
 		fr.u = ln.stack[d][ln.fill[d] : ln.fill[d]+size]
+	}
+	for i, r := range a.below(s) {
+		ln.place[r] = int32(w) + int32(i)
 	}
 	var run each
 	if workers > 1 && frontCost(w, m) > parallelFront {

@@ -30,7 +30,7 @@ func updateSize(w, m int64) int64 {
 
 // slack is how many values beyond a front's own kernels may read, without using them: they
 // load eight columns of B where fewer are left.
-const slack = 8
+const slack = 64
 
 // front gives access to the arrays of one supernode while it is being computed.
 type front struct {

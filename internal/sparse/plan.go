@@ -14,13 +14,19 @@ type plan struct {
 	slab     int64   // values
 	stack    [2]int64
 	topStack [2]int64
-	vector   [2]int64 // as stack, for the solves: one value a row
-	depth    []uint8  // parity of the depth: a front and its children use different stacks
+	depth    []uint8 // parity of the depth: a front and its children use different stacks
+
+	// The same for the solves, where a front hands a vector to its parent. Fronts of the top have a slot, too.
+	vectorSlot  []int64
+	vectorSlab  int64
+	vectorStack [2]int64
+	waits       []int32 // in the top: subtrees and fronts to wait for
 }
 
 func makePlan(nodes []supernode, workers int) *plan {
 	n := len(nodes)
-	pl := &plan{workers: workers, isTop: make([]bool, n), slot: make([]int64, n), depth: make([]uint8, n)}
+	pl := &plan{workers: workers, isTop: make([]bool, n), slot: make([]int64, n), depth: make([]uint8, n),
+		vectorSlot: make([]int64, n), waits: make([]int32, n)}
 	work := make([]float64, n)
 	total := 0.0
 	for s := range nodes {
@@ -52,6 +58,14 @@ func makePlan(nodes []supernode, workers int) *plan {
 			pl.slot[s] = pl.slab
 			pl.slab += updateSize(int64(nodes[s].w), int64(nodes[s].m))
 		}
+		pl.vectorSlot[s] = -1
+		if pl.isTop[s] || pl.slot[s] >= 0 {
+			pl.vectorSlot[s] = pl.vectorSlab
+			pl.vectorSlab += int64(nodes[s].m - nodes[s].w)
+			if q >= 0 {
+				pl.waits[q]++
+			}
+		}
 	}
 	slices.Reverse(pl.top)
 	slices.SortStableFunc(pl.subtrees, func(a, b int32) int {
@@ -76,7 +90,7 @@ func makePlan(nodes []supernode, workers int) *plan {
 		case pl.slot[s] < 0:
 			size[d] += u
 			vector[d] += r
-			pl.stack[d], pl.vector[d] = max(pl.stack[d], size[d]), max(pl.vector[d], vector[d])
+			pl.stack[d], pl.vectorStack[d] = max(pl.stack[d], size[d]), max(pl.vectorStack[d], vector[d])
 		}
 		for c := int32(s) - 1; c >= nodes[s].lo; c = nodes[c].lo - 1 { // the children, last first
 			u, r := updateSize(int64(nodes[c].w), int64(nodes[c].m)), int64(nodes[c].m-nodes[c].w)
@@ -92,7 +106,7 @@ func makePlan(nodes []supernode, workers int) *plan {
 	return pl
 }
 
-// values is the number of float64 values that a factorisation needs beside the factor.
-func (pl *plan) values() int64 {
-	return pl.slab + pl.topStack[0] + pl.topStack[1] + int64(pl.workers)*(pl.stack[0]+pl.stack[1])
+// bytes is the memory that a factorisation of n rows needs beside the factor.
+func (pl *plan) bytes(n int) int64 {
+	return 4*int64(pl.workers+1)*int64(n) + 8*(pl.slab+pl.topStack[0]+pl.topStack[1]+int64(pl.workers)*(pl.stack[0]+pl.stack[1]))
 }

@@ -12,90 +12,91 @@ import (
 //
 // For an M-matrix (positive definite, no positive entry off the diagonal) and b ≥ 0 no
 // subtraction cancels, neither here nor off the diagonal in the factorisation, so each x[i] is right to
-// a relative error of a small multiple of the tree's height times 2^-53 of its own, however far
-// below the largest it lies, down to 1e-300 of it. The right side is scaled by a power of two so that the
-// range of float64 lies where it is needed, and the result is exactly homogeneous in b by powers of two.
+// a small relative error of its own, however far below the largest it lies, down to about
+// 1e-300 of it. The right side is scaled by a power of two so that the range of float64 lies
+// where it is needed: solutions of b and of 2^k b have the same digits.
 func (f *Factor) SolveTo(dst, b []float64) {
 	f.checkSolve(dst, b, 1)
-	a := f.a
-	v := a.getVectors()
-	up, down := f.loadScaled(v.x, b)
-	for s := range a.nodes {
-		f.forward(v, int32(s))
-	}
-	for s := len(a.nodes) - 1; s >= 0; s-- {
-		f.backward(v, int32(s))
-	}
-	f.storeScaled(dst, v.x, up, down)
-	a.vectors.Put(v)
+	v := f.a.getVectors(1)
+	scaling := f.load(v.x, 1, b)
+	f.a.upwards(v, func(ln *solveLane, s int32) { f.forward(v, ln, s) })
+	f.a.downwards(v, func(ln *solveLane, s int32) { f.backward(v, ln, s) })
+	f.store(dst, v.x, 1, scaling)
+	f.a.putVectors(v)
 }
 
 func (f *Factor) checkSolve(dst, b []float64, k int) {
 	if f.matrix == nil {
 		panic("sparse: solve without a factor: Factorize has not succeeded")
 	}
-	if n := len(f.a.perm); len(b) != n*k || len(dst) != n*k {
+	if n := len(f.a.perm); k < 0 || len(b) != n*k || len(dst) != n*k {
 		panic("sparse: solve: length is not rows times right sides")
 	}
 }
 
-// loadScaled sets x = 2^e S P b with e such that the largest value is near 2^400, which leaves the lower values
-// four fifths of the range of exponents, and solutions room to be larger. up and down are the two factors
-// whose product is 2^-e; it may itself be out of range.
-func (f *Factor) loadScaled(x, b []float64) (back1, back2 float64) {
-	largest := 0.0
-	for k, v := range f.a.perm {
-		largest = max(largest, math.Abs(b[v]*f.scale[k]))
+// chunk is how many rows one goroutine copies at a time.
+const chunk = 1 << 14
+
+// load sets x = 2^e S P b, x having the given stride, with e such that the largest value is near 2^400: values far
+// below it keep four fifths of the range of exponents, and solutions have room to be larger. It returns e.
+func (f *Factor) load(x []float64, stride int, b []float64) (e int) {
+	n := len(f.a.perm)
+	workers := f.a.plan.workers
+	chunks := (n + chunk - 1) / chunk
+	largest := make([]float64, chunks)
+	inParallel(workers, chunks, func(_, i int) {
+		top := 0.0
+		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
+			v := b[f.a.perm[k]] * f.scale[k]
+			x[k*stride] = v
+			top = max(top, math.Abs(v))
+		}
+		largest[i] = top
+	})
+	top := 0.0
+	for _, v := range largest {
+		top = max(top, v)
 	}
-	e := 0
-	if largest > 0 && largest <= math.MaxFloat64 {
-		_, e = math.Frexp(largest)
-		e = 400 - e
+	if !(top > 0) || top > math.MaxFloat64 {
+		return 0
 	}
-	up1, up2 := math.Ldexp(1, e/2), math.Ldexp(1, e-e/2)
-	for k, v := range f.a.perm {
-		x[k] = b[v] * f.scale[k] * up1 * up2
-	}
-	return math.Ldexp(1, -(e / 2)), math.Ldexp(1, -(e - e/2))
+	_, e = math.Frexp(top)
+	e = 400 - e
+	up1, up2 := math.Ldexp(1, e/2), math.Ldexp(1, e-e/2) // 2^e may be out of range
+	inParallel(workers, chunks, func(_, i int) {
+		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
+			x[k*stride] *= up1
+			x[k*stride] *= up2
+		}
+	})
+	return e
 }
 
-func (f *Factor) storeScaled(dst, x []float64, back1, back2 float64) {
-	for k, v := range f.a.perm {
-		dst[v] = x[k] * f.scale[k] * back1 * back2
-	}
+// store sets dst = 2^-e Pᵀ S x.
+func (f *Factor) store(dst, x []float64, stride, e int) {
+	n := len(f.a.perm)
+	down1, down2 := math.Ldexp(1, -(e/2)), math.Ldexp(1, -(e-e/2))
+	inParallel(f.a.plan.workers, (n+chunk-1)/chunk, func(_, i int) {
+		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
+			dst[f.a.perm[k]] = x[k*stride] * f.scale[k] * down1 * down2
+		}
+	})
 }
 
-// vectors is what one solve works with.
-type vectors struct {
-	x     []float64 // in the order of elimination
-	t     []float64 // one front's rows
-	stack [2][]float64
-	fill  [2]int
-}
-
-func (a *Analysis) getVectors() *vectors {
-	if v, ok := a.vectors.Get().(*vectors); ok {
-		return v
-	}
-	v := &vectors{x: make([]float64, len(a.perm))}
-	longest := int32(0)
-	for s := range a.nodes {
-		longest = max(longest, a.nodes[s].m)
-	}
-	v.t = make([]float64, longest+8)
-	return v
-}
-
-// forward eliminates the columns of supernode s from the right side.
-func (f *Factor) forward(v *vectors, s int32) {
+// forward eliminates the columns of supernode s from the right side, and hands the rest to its parent.
+func (f *Factor) forward(v *vectors, ln *solveLane, s int32) {
 	a := f.a
 	node := &a.nodes[s]
 	w, m := int(node.w), int(node.m)
 	fr := front{w: w, m: m, blocks: (m + 7) / 8, l: f.values[node.values:]}
-	t := v.t[:8*fr.blocks]
-	clear(t)
+	t := ln.t[:8*fr.blocks]
 	x := v.x[node.first : node.first+node.w]
-	copy(t, x)
+	clear(t[copy(t, x):])
+	out := a.take(v, ln, s, func(relative []int32, from []float64) {
+		for i, r := range relative {
+			t[r] += from[i]
+		}
+	})
 	for p := 0; 8*p < w; p++ {
 		start, cols := fr.factorPanel(p)
 		d := fr.l[start:][:8*cols]
@@ -110,18 +111,16 @@ func (f *Factor) forward(v *vectors, s int32) {
 		dense.MulSub(t[8*p+8:], fr.l[start+8*cols:], y[:], fr.blocks-p-1, cols)
 	}
 	copy(x, t)
-	for i, r := range a.below(s) {
-		v.x[r] += t[w+i]
-	}
+	copy(out, t[w:m])
 }
 
 // backward solves for the columns of supernode s, all later ones being known.
-func (f *Factor) backward(v *vectors, s int32) {
+func (f *Factor) backward(v *vectors, ln *solveLane, s int32) {
 	a := f.a
 	node := &a.nodes[s]
 	w, m := int(node.w), int(node.m)
 	fr := front{w: w, m: m, blocks: (m + 7) / 8, l: f.values[node.values:]}
-	t := v.t[:8*fr.blocks]
+	t := ln.t[:8*fr.blocks]
 	x := v.x[node.first : node.first+node.w]
 	copy(t, x)
 	for i, r := range a.below(s) {
@@ -142,13 +141,4 @@ func (f *Factor) backward(v *vectors, s int32) {
 		}
 	}
 	copy(x, t)
-}
-
-// SolveManyTo solves for k right sides, column-major: b is n × k. dst may be b.
-func (f *Factor) SolveManyTo(dst, b []float64, k int) {
-	f.checkSolve(dst, b, k)
-	n := len(f.a.perm)
-	for c := range k {
-		f.SolveTo(dst[c*n:c*n+n], b[c*n:c*n+n])
-	}
 }
