@@ -23,7 +23,8 @@ type front struct {
 	frame *frames
 
 	d     []float64 // distance, by vertex; +Inf where the front has not been
-	kappa []float64 // curvature of the front; +Inf at a source
+	left  []float64 // curvature of the front to the left of the ray; +Inf at a source
+	right []float64 // to the right: another where the ray has grazed a corner, see alongEdge
 	back  []float64 // angle of the ray back, in the vertex's frame; NaN where there is none
 	noise []float64 // how far directions may be off, from the curvature the ray has met
 	weak  []bool    // reached on the word of one end of an edge only, or round a bend
@@ -37,8 +38,9 @@ const (
 	flatNoise = 1e-7
 	// curvedNoise times K·h², the turn of a frame from one vertex to the next, is the
 	// disagreement that discretisation explains. Chosen on spheres, tori and
-	// paraboloids of 2 500 to 160 000 vertices: from 5 to 40 the errors hardly change.
-	curvedNoise = 15
+	// coils of 2 500 to 20 000 vertices: below 2 neighbours on rough meshes fall out with
+	// each other, above 8 the two fronts at a cut locus are taken for one.
+	curvedNoise = 4
 	// rim lets a ray pass an edge's end by this part of the edge, so that a ray through
 	// a vertex is found from at least one side.
 	rim = 1e-9
@@ -48,7 +50,7 @@ func newFront(s *mesh.Surface, f *frames) *front {
 	n := s.NumVertices
 	return &front{
 		s: s, frame: f,
-		d: make([]float64, n), kappa: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
+		d: make([]float64, n), left: make([]float64, n), right: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
 		weak: make([]bool, n), done: make([]bool, n), fixed: make([]bool, n),
 	}
 }
@@ -60,7 +62,7 @@ func (w *front) start(vertices []int32, line []bool) {
 	}
 	w.line = line
 	source := func(v int32) {
-		w.d[v], w.kappa[v], w.back[v], w.noise[v] = 0, math.Inf(1), math.NaN(), 0
+		w.d[v], w.left[v], w.right[v], w.back[v], w.noise[v] = 0, math.Inf(1), math.Inf(1), math.NaN(), 0
 		w.done[v], w.fixed[v] = true, true
 	}
 	for _, v := range vertices {
@@ -76,8 +78,8 @@ func (w *front) start(vertices []int32, line []bool) {
 
 // An arrival is the front's state at a vertex.
 type arrival struct {
-	d, kappa, back, noise float64
-	weak                  bool
+	d, left, right, back, noise float64
+	weak                        bool
 }
 
 // offer takes an arrival if it is earlier, but nothing weak over something that is not:
@@ -103,7 +105,7 @@ func (w *front) sweep(order []int32) {
 }
 
 func (w *front) set(v int32, a arrival) {
-	w.d[v], w.kappa[v], w.back[v] = a.d, a.kappa, a.back
+	w.d[v], w.left[v], w.right[v], w.back[v] = a.d, a.left, a.right, a.back
 	w.noise[v], w.weak[v] = a.noise, a.weak
 }
 
@@ -180,44 +182,45 @@ func (w *front) arrive(v int32) arrival {
 }
 
 // alongEdge takes the front from q along an edge to v. Where the ray to q runs on along
-// that edge the front just goes on. Everywhere else it starts anew at q, as it does at
-// a source and behind a corner that casts a shadow (a saddle, a re-entrant rim): a path
-// that bends at q is real, so its length can be too long, but never too short, and is
-// kept only until something better comes.
+// that edge the front just goes on; if q is a corner that casts a shadow (a saddle, a
+// re-entrant rim) the ray grazes it, and on the dark side the front is one that starts
+// at q. It starts anew at q on both sides at a source and in the shadow, and indeed
+// everywhere else: a path that bends at q is real, so its length can be too long, but
+// never too short, and is kept only until something better comes.
 func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64) {
 	length := w.s.Length[edge]
-	a := arrival{d: w.d[q] + length, kappa: 1 / length, back: fromV}
+	a := arrival{d: w.d[q] + length, left: 1 / length, right: 1 / length, back: fromV}
 	if a.d >= best.d {
 		return
 	}
-	if !math.IsInf(w.kappa[q], 1) {
-		straight, shadow := w.ahead(q, edge, fromQ)
-		switch {
-		case straight:
-			a.kappa = w.kappa[q] / max(1+w.kappa[q]*length, 1e-9)
-		case !shadow:
-			a.weak = true
+	if !w.source(q) {
+		toLeft, toRight := w.ahead(q, edge, fromQ)
+		tol := flatNoise + curvedNoise*w.noise[q]
+		straightLeft, straightRight := math.Abs(toLeft-math.Pi) <= tol, math.Abs(toRight-math.Pi) <= tol
+		if straightRight || straightLeft && toRight < math.Pi {
+			a.right = w.right[q] / max(1+w.right[q]*length, 1e-9)
 		}
+		if straightLeft || straightRight && toLeft < math.Pi {
+			a.left = w.left[q] / max(1+w.left[q]*length, 1e-9)
+		}
+		a.weak = !straightLeft && !straightRight && min(toLeft, toRight) < math.Pi
 	}
-	a.kappa = w.bend(a.kappa, length, v)
+	a.left, a.right = w.bend(a.left, length, v), w.bend(a.right, length, v)
 	a.noise = max(w.noise[q], w.frame.turning[v])
 	best.offer(a)
 }
 
-// ahead tells how an edge at q, which leaves at the given angle of q's frame, lies to
-// the ray that comes to q: straight on, as far as directions are known, or in the
-// shadow, more than a half turn away on either side.
-func (w *front) ahead(q, edge int32, angle float64) (straight, shadow bool) {
-	var left, right float64
+// source tells whether the front starts at q: it has no ray to it.
+func (w *front) source(q int32) bool { return math.IsInf(w.left[q], 1) }
+
+// ahead is the angle between the ray back at q and an edge there, which leaves at the
+// given angle of q's frame: round the left side of the ray, and round the right.
+func (w *front) ahead(q, edge int32, angle float64) (left, right float64) {
 	if w.frame.kind[q] == odd {
-		left = w.frame.search(w.s, q, w.back[q], edge, false)
-		right = left
-	} else {
-		left, right = w.frame.turn(q, w.back[q], angle), w.frame.turn(q, angle, w.back[q])
+		either := w.frame.search(w.s, q, w.back[q], edge, false)
+		return either, either
 	}
-	tol := flatNoise + curvedNoise*w.noise[q]
-	const half = math.Pi * (1 - 1e-12)
-	return math.Abs(left-math.Pi) <= tol || math.Abs(right-math.Pi) <= tol, left >= half && right >= half
+	return w.frame.turn(q, angle, w.back[q]), w.frame.turn(q, w.back[q], angle)
 }
 
 // bend corrects the curvature of a front that reached v over the given length on a
@@ -245,7 +248,8 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	}
 	if w.line != nil && w.line[h1] {
 		if tri.x >= 0 && tri.x <= length {
-			best.offer(arrival{tri.y, w.bend(0, tri.y, v), w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], false})
+			kappa := w.bend(0, tri.y, v)
+			best.offer(arrival{tri.y, kappa, kappa, w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], false})
 		}
 		return
 	}
@@ -254,11 +258,11 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	da, db, noise := math.Inf(1), math.Inf(1), w.frame.turning[v]
 	if w.done[a] {
 		da, noise = w.d[a], max(noise, w.noise[a])
-		ra, knowsA = w.rayAt(a, w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
+		ra, knowsA = w.rayAt(a, w.right[a], w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
 	}
 	if w.done[b] {
 		db, noise = w.d[b], max(noise, w.noise[b])
-		rb, knowsB = w.rayAt(b, w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
+		rb, knowsB = w.rayAt(b, w.left[b], w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
 	}
 	if min(da, db) >= best.d && !best.weak {
 		return // the front passes this edge when it is past v
@@ -343,7 +347,8 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		return
 	}
 	run := math.Hypot(x-p.tri.x, p.tri.y)
-	best.offer(arrival{value, w.bend(kappa, run, p.v), w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, p.weak})
+	kappa = w.bend(kappa, run, p.v)
+	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, p.weak})
 }
 
 // triangle is a face laid into the plane: a = (0, 0), b = (length, 0), v = (x, y).
@@ -362,15 +367,15 @@ type ray struct{ d, kappa, x, ex, ey float64 }
 // enters through an edge. gap is the angle at q between the ray back and that edge, on
 // the far side. It is not known where the ray does not come through the edge, and at
 // sources.
-func (w *front) rayAt(q int32, gap, x float64) (r ray, known bool) {
-	if !(gap < math.Pi) || math.IsInf(w.kappa[q], 1) { // NaN: no direction
+func (w *front) rayAt(q int32, kappa, gap, x float64) (r ray, known bool) {
+	if !(gap < math.Pi) || math.IsInf(kappa, 1) { // NaN: no direction
 		return ray{}, false
 	}
 	sin, cos := math.Sincos(gap)
 	if x > 0 {
 		cos = -cos
 	}
-	return ray{d: w.d[q], kappa: w.kappa[q], x: x, ex: cos, ey: -sin}, true
+	return ray{d: w.d[q], kappa: kappa, x: x, ex: cos, ey: -sin}, true
 }
 
 // at is the distance that the ray foretells at (x, y).
