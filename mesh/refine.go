@@ -3,21 +3,9 @@ package mesh
 import (
 	"cmp"
 	"context"
-	"fmt"
 	"math"
 	"slices"
 )
-
-// A RefineError is a refinement that needs more new vertices than its budget.
-type RefineError struct {
-	MaxEdge        float64
-	Budget, Needed int // Needed is an estimate, good to some tens of percent
-}
-
-func (e *RefineError) Error() string {
-	return fmt.Sprintf("edges of at most %g need about %d new vertices; the budget is %d (ask for longer edges)",
-		e.MaxEdge, e.Needed, e.Budget)
-}
 
 // Refine gives a mesh of the same surface whose edges are at most maxEdge long. Vertices
 // of m keep their numbers, and new ones follow; boundary and crease edges are
@@ -32,8 +20,8 @@ func (e *RefineError) Error() string {
 // surface by no more than a hundred-thousandth of its faces' heights: lengths change by
 // less than 1e-10. O(n log n).
 //
-// At most budget vertices are added; the error is a *RefineError if that does not
-// do, or ctx.Err(). Refine panics if maxEdge is not positive and finite.
+// At most budget vertices are added; the error is a *BudgetError if that does not do
+// (Needed is an estimate, on coarse meshes up to twice too large), or ctx.Err(). Refine panics if maxEdge is not positive and finite.
 func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, error) {
 	if !(maxEdge > 0 && maxEdge <= math.MaxFloat64) {
 		panic("mesh: Refine: the longest edge must be positive and finite")
@@ -54,8 +42,8 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 	}
 	r.flipBefore(long)
 	needed := r.estimate()
-	if needed > 4*float64(budget)+100 { // no use in trying
-		return nil, &RefineError{MaxEdge: maxEdge, Budget: budget, Needed: int(min(needed, math.MaxInt32))}
+	if needed > 2.5*float64(budget)+100 { // no use in trying
+		return nil, &BudgetError{MaxEdge: maxEdge, Budget: budget, Needed: int(min(needed, math.MaxInt32))}
 	}
 	for h := range int32(len(r.t)) {
 		r.enqueue(h)
@@ -66,7 +54,7 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 			break
 		}
 		if len(r.x)/3 >= r.most {
-			return nil, &RefineError{MaxEdge: maxEdge, Budget: budget, Needed: max(budget+1, int(needed))}
+			return nil, &BudgetError{MaxEdge: maxEdge, Budget: budget, Needed: max(budget+1, int(needed))}
 		}
 		r.divide(h)
 		if count%4096 == 0 && ctx.Err() != nil {

@@ -10,6 +10,7 @@ import (
 
 	"heatskin/internal/meshtest"
 	"heatskin/mesh"
+	"heatskin/mesh/geodesic"
 )
 
 // pillow is two squares that lie on each other and share their rim, cut along
@@ -162,6 +163,40 @@ func TestRefineAnything(t *testing.T) {
 	}
 }
 
+// Exact distances do not see how a face is cut up: to 1e-10, as a flip may use a
+// plane's rounding.
+func TestRefineKeepsDistances(t *testing.T) {
+	bracket, _ := meshtest.Bracket(4, 6)
+	for name, m := range map[string]*mesh.Mesh{
+		"box":     meshtest.Box(2, 1, 0.5, [3]int{2, 2, 2}, 0.2, 1),
+		"bracket": meshtest.Rotate(bracket, [3]float64{1, 2, 3}, 1),
+		"slit":    meshtest.SlitPlate(2, 0.5, 1.5, 0, 0),
+		"saddle":  meshtest.Fan(8, math.Pi/3, []float64{1, 2}),
+		"book":    meshtest.Book(3, 2),
+		"sphere":  meshtest.ShakenSphere(2, 1),
+	} {
+		r := mesh.Check(m)
+		fine, err := mesh.Refine(context.Background(), m, r.EdgeLength.Max/7, 100_000)
+		if err != nil {
+			t.Fatal(err)
+		}
+		from := []mesh.Datum{mesh.AtVertex(0)}
+		want, err := geodesic.Field(context.Background(), m, from, geodesic.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		got, err := geodesic.Field(context.Background(), fine, from, geodesic.Options{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for v := range want {
+			if math.Abs(got[v]-want[v]) > 1e-10*want[v] {
+				t.Fatalf("%s: vertex %d at %.15g, refined at %.15g", name, v, want[v], got[v])
+			}
+		}
+	}
+}
+
 // A face written twice, in either order, is after refinement still twice the same
 // faces, which share their new edges.
 func TestRefineKeepsDoubledFacesDoubled(t *testing.T) {
@@ -224,14 +259,14 @@ func TestRefineBudget(t *testing.T) {
 			t.Errorf("h = %v: the %d vertices it needs are refused: %v", h, added, err)
 		}
 		for _, budget := range []int{0, added / 10, added - 1} {
-			var short *mesh.RefineError
+			var short *mesh.BudgetError
 			if _, err := mesh.Refine(ctx, m, h, budget); !errors.As(err, &short) || short.Budget != budget ||
 				short.Needed <= budget || float64(short.Needed) < 0.8*float64(added) || float64(short.Needed) > 1.5*float64(added) {
 				t.Errorf("h = %v, budget %d: %v; it needs %d", h, budget, err, added)
 			}
 		}
 	}
-	var short *mesh.RefineError
+	var short *mesh.BudgetError
 	if _, err := mesh.Refine(ctx, m, 1e-300, 1000); !errors.As(err, &short) {
 		t.Errorf("hopelessly fine: %v", err)
 	}

@@ -61,8 +61,12 @@ func (r *Report) judge(outOfRange error, welded int) {
 		find("%d vertices are in no triangle with an area: they have no value, and cannot be a source", r.IsolatedVertices)
 	}
 	if r.NonDelaunayEdges > 0 && withArea > 0 {
-		find("%d edges (%.2g %%) are not Delaunay, and %d faces are slivers: edges are flipped inside the surface for heat, and distances are not the worse for it",
-			r.NonDelaunayEdges, 100*float64(r.NonDelaunayEdges)/float64(max(1, r.Edges)), r.Slivers)
+		slivers := ""
+		if r.Slivers > 0 {
+			slivers = fmt.Sprintf(", and %d faces are slivers", r.Slivers)
+		}
+		find("%d edges (%.2g %%) are not Delaunay%s: edges are flipped inside the surface for heat, and distances are not the worse for it",
+			r.NonDelaunayEdges, 100*float64(r.NonDelaunayEdges)/float64(max(1, r.Edges)), slivers)
 	}
 
 	r.FitForDistance = withArea > 0 && outOfRange == nil && !torn
