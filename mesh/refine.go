@@ -34,8 +34,7 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 	if len(long) == 0 {
 		return m, nil
 	}
-	r.x = append(make([]float64, 0, len(m.Positions)*5/4), m.Positions...)
-	r.t = append(make([]int32, 0, len(m.Triangles)*5/4), m.Triangles...)
+	r.x, r.t = slices.Clone(m.Positions), slices.Clone(m.Triangles)
 	r.back = make([]int32, len(r.glued))
 	for h, o := range r.glued {
 		r.back[o] = int32(h)
@@ -45,6 +44,9 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 	if needed > 2.5*float64(budget)+100 { // no use in trying
 		return nil, &BudgetError{MaxEdge: maxEdge, Budget: budget, Needed: int(min(needed, math.MaxInt32))}
 	}
+	more := int(min(needed*1.1, float64(budget))) // two faces a vertex: nothing is copied on the way
+	r.x, r.t = slices.Grow(r.x, 3*more), slices.Grow(r.t, 6*more)
+	r.glued, r.back = slices.Grow(r.glued, 6*more), slices.Grow(r.back, 6*more)
 	for h := range int32(len(r.t)) {
 		r.enqueue(h)
 	}
