@@ -50,30 +50,28 @@ func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 	if workers <= 0 {
 		workers = runtime.GOMAXPROCS(0)
 	}
-	perm, err := dissect(ctx, p, opt.Coords, workers)
+	g, near, perm, err := dissect(ctx, p, opt.Coords, workers)
 	if err != nil {
 		return nil, err
 	}
 	inverse := invert(perm)
-	parent := eliminationTree(p, perm, inverse)
+	parent := eliminationTree(g, perm, inverse)
 	post := postorder(parent)
-	count := columnCounts(p, perm, inverse, parent, post)
+	count := columnCounts(g, perm, inverse, parent, post)
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
-	a := &Analysis{pattern: p, perm: perm}
-	a.stats = Stats{Rows: n}
+	a := &Analysis{pattern: p, stats: Stats{Rows: n}}
 	for _, c := range count {
 		a.stats.FactorNonzeros += int64(c)
 		a.stats.Flops += float64(c) * float64(c)
 	}
 	var order []int32
 	a.nodes, order = supernodes(parent, post, count)
-	a.perm = make([]int32, n)
 	for k, j := range order {
-		a.perm[k] = perm[j]
+		order[k] = perm[j]
 	}
-	a.inverse = invert(a.perm)
+	inverse = invert(order)
 	a.stats.Supernodes = len(a.nodes)
 	var below int64
 	for s := range a.nodes {
@@ -89,7 +87,12 @@ func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 	}
 	a.rows = make([]int32, below)
 	a.relative = make([]int32, below)
-	a.structure()
+	a.structure(g, order, inverse)
+	a.perm = order
+	for k, v := range order {
+		a.perm[k] = near[v]
+	}
+	a.inverse = invert(a.perm)
 	return a, ctx.Err()
 }
 
@@ -101,48 +104,63 @@ func invert(perm []int32) (inverse []int32) {
 	return inverse
 }
 
-// structure fills in the rows of each supernode: the union of its columns' entries in the matrix and
-// of its children's rows.
-func (a *Analysis) structure() {
-	mark := make([]int32, len(a.perm)) // 1 + the supernode that last had the row
-	for s := range a.nodes {
-		node := &a.nodes[s]
-		end := node.first + node.w
-		rows := a.rows[node.rows:node.rows]
-		stamp := int32(s) + 1
-		for _, v := range a.perm[node.first:end] {
-			for _, w := range a.pattern.Adj[a.pattern.Ptr[v]:a.pattern.Ptr[v+1]] {
-				if i := a.inverse[w]; i >= end && mark[i] != stamp {
-					mark[i] = stamp
-					rows = append(rows, i)
-				}
+// structure fills in the rows of all supernodes, subtree by subtree.
+func (a *Analysis) structure(g *graph, perm, inverse []int32) {
+	pl := a.plan
+	marks := make([][]int32, pl.workers) // 1 + the supernode that last had the row
+	for i := range marks {
+		marks[i] = make([]int32, len(perm))
+	}
+	inParallel(pl.workers, len(pl.subtrees), func(worker, i int) {
+		root := pl.subtrees[i]
+		for s := a.nodes[root].lo; s <= root; s++ {
+			a.rowsBelow(g, perm, inverse, s, marks[worker])
+		}
+	})
+	for _, s := range pl.top {
+		a.rowsBelow(g, perm, inverse, s, marks[0])
+	}
+}
+
+// rowsBelow fills in the rows of a supernode, the union of its columns' entries in the matrix and
+// of its children's rows, and the places of the latter.
+func (a *Analysis) rowsBelow(g *graph, perm, inverse []int32, s int32, mark []int32) {
+	node := &a.nodes[s]
+	end := node.first + node.w
+	rows := a.rows[node.rows:node.rows]
+	stamp := s + 1
+	for _, v := range perm[node.first:end] {
+		for _, w := range g.neighbours(v) {
+			if i := inverse[w]; i >= end && mark[i] != stamp {
+				mark[i] = stamp
+				rows = append(rows, i)
 			}
 		}
-		for c := int32(s) - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
-			for _, i := range a.below(c) {
-				if i >= end && mark[i] != stamp {
-					mark[i] = stamp
-					rows = append(rows, i)
-				}
+	}
+	for c := s - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
+		for _, i := range a.below(c) {
+			if i >= end && mark[i] != stamp {
+				mark[i] = stamp
+				rows = append(rows, i)
 			}
 		}
-		if len(rows) != int(node.m-node.w) {
-			panic("sparse: column counts disagree with the structure: the pattern is not symmetric")
-		}
-		slices.Sort(rows)
-		for c := int32(s) - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
-			relative := a.relative[a.nodes[c].rows:]
-			at := int32(0)
-			for i, r := range a.below(c) {
-				if r < end {
-					relative[i] = r - node.first
-					continue
-				}
-				for rows[at] != r {
-					at++
-				}
-				relative[i] = node.w + at
+	}
+	if len(rows) != int(node.m-node.w) {
+		panic("sparse: column counts disagree with the structure: the pattern is not symmetric")
+	}
+	slices.Sort(rows)
+	for c := s - 1; c >= node.lo; c = a.nodes[c].lo - 1 {
+		relative := a.relative[a.nodes[c].rows:]
+		at := int32(0)
+		for i, r := range a.below(c) {
+			if r < end {
+				relative[i] = r - node.first
+				continue
 			}
+			for rows[at] != r {
+				at++
+			}
+			relative[i] = node.w + at
 		}
 	}
 }

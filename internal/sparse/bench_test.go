@@ -35,7 +35,7 @@ func BenchmarkSphere(b *testing.B) {
 			workers := runtime.GOMAXPROCS(0)
 			b.Run("order", func(b *testing.B) {
 				for b.Loop() {
-					if _, err := dissect(context.Background(), s.m.Pattern, s.coords, workers); err != nil {
+					if _, _, _, err := dissect(context.Background(), s.m.Pattern, s.coords, workers); err != nil {
 						b.Fatal(err)
 					}
 				}

@@ -13,7 +13,7 @@ const (
 	leafSize   = 120  // pieces up to this size are ordered by minimum degree
 	forkSize   = 4096 // pieces from this size on may go to another goroutine
 	bandLayers = 8    // on each side of a cut
-	samples    = 512  // points that choose a direction
+	samples    = 256  // points that choose a direction
 	hubFactor  = 12   // a vertex with more than 40 + hubFactor·√n neighbours is kept for the end
 	stubborn   = 4096 // pieces up to this size that no cut helps are ordered by minimum degree as a whole
 )
@@ -39,18 +39,16 @@ type dissector struct {
 type tool struct {
 	cutter cutter
 	md     minimumDegree
+	axes   [3][3]float32 // of the piece that split has seen last
 	sample []float32
 	counts []int32
 }
 
-// dissect returns an order of elimination that keeps the factor of matrices on p sparse. coords, 3 a row, may
-// be nil. The order does not depend on the number of workers.
-func dissect(ctx context.Context, p *Pattern, coords []float64, workers int) ([]int32, error) {
+// dissect returns an order of elimination that keeps the factor of matrices on p sparse, as vertices of a
+// renumbered graph in which neighbours are near in memory: perm[k] is the vertex of g eliminated k-th, row
+// near[perm[k]] of p. coords, 3 a row, may be nil. The order does not depend on the number of workers.
+func dissect(ctx context.Context, p *Pattern, coords []float64, workers int) (g *graph, near, perm []int32, err error) {
 	n := p.Dim()
-	if n == 0 {
-		return nil, ctx.Err()
-	}
-	var near []int32
 	var xyz []float32
 	if len(coords) == 3*n {
 		near, xyz = curveOrder(coords)
@@ -58,7 +56,7 @@ func dissect(ctx context.Context, p *Pattern, coords []float64, workers int) ([]
 	if near == nil {
 		near = breadthFirstOrder(p)
 	}
-	g := renumber(p, near, xyz, workers)
+	g = renumber(p, near, xyz, workers)
 	d := &dissector{graph: *g,
 		verts: make([]int32, n), queue: make([]int32, n), part: make([]int32, n), level: make([]int32, n),
 		index: make([]int32, n), side: make([]uint8, n), tokens: make(chan struct{}, workers)}
@@ -85,13 +83,7 @@ func dissect(ctx context.Context, p *Pattern, coords []float64, workers int) ([]
 	}
 	d.order(0, int32(kept))
 	d.wait.Wait()
-	if err := ctx.Err(); err != nil {
-		return nil, err
-	}
-	for k, v := range d.verts {
-		d.verts[k] = near[v]
-	}
-	return d.verts, nil
+	return g, near, d.verts, ctx.Err()
 }
 
 // order arranges the piece [lo, hi).
@@ -284,12 +276,12 @@ func (d *dissector) farEnd(t *tool, lo, hi int32) int32 {
 	if d.xyz == nil {
 		return verts[0]
 	}
-	axes := d.axes(verts)
+	t.axes = d.axes(verts)
 	far, best := verts[0], float32(math.Inf(1))
 	step := max(1, len(verts)/samples)
 	for k := 0; k < len(verts); k += step {
 		v := verts[k]
-		if f := d.along(axes[0], v); f < best {
+		if f := d.along(t.axes[0], v); f < best {
 			far, best = v, f
 		}
 	}
@@ -307,24 +299,22 @@ func (d *dissector) along(axis [3]float32, v int32) float32 {
 func (d *dissector) planeCut(t *tool, lo, hi int32) float64 {
 	verts := d.verts[lo:hi]
 	id := lo + 1
-	axes := d.axes(verts)
 	best, widest := -1, float32(0)
 	step := max(1, len(verts)/samples)
-	for a, axis := range axes {
+	for a, axis := range t.axes {
 		t.sample = t.sample[:0]
 		for k := 0; k < len(verts); k += step {
 			t.sample = append(t.sample, d.along(axis, verts[k]))
 		}
-		slices.Sort(t.sample)
 		n := len(t.sample)
-		if spread := t.sample[n*11/20] - t.sample[n*9/20]; spread > widest {
+		if spread := quickSelect(t.sample, n*11/20) - quickSelect(t.sample, n*9/20); spread > widest {
 			best, widest = a, spread
 		}
 	}
 	if best < 0 {
 		return 0
 	}
-	axis := axes[best]
+	axis := t.axes[best]
 	value := d.value[lo:hi]
 	for k, v := range verts {
 		value[k] = d.along(axis, v)

@@ -1,17 +1,17 @@
 package sparse
 
-// eliminationTree returns the parent of each column of the factor, -1 at a root, when the rows
-// of p are eliminated in the order perm, whose inverse is given: parent[k] is the first row below
+// eliminationTree returns the parent of each column of the factor, -1 at a root, when the vertices
+// of g are eliminated in the order perm, whose inverse is given: parent[k] is the first row below
 // the diagonal in column k of L. It runs in O(|A| α) (J. W. H. Liu, SIAM J. Matrix Anal. Appl.
 // 11(1), 1990, pp. 134–172, algorithm 4.2: path compression).
-func eliminationTree(p *Pattern, perm, inverse []int32) (parent []int32) {
+func eliminationTree(g *graph, perm, inverse []int32) (parent []int32) {
 	n := len(perm)
 	parent = make([]int32, n)
 	ancestor := make([]int32, n)
 	for k := range int32(n) {
 		parent[k], ancestor[k] = -1, -1
 		v := perm[k]
-		for _, w := range p.Adj[p.Ptr[v]:p.Ptr[v+1]] {
+		for _, w := range g.neighbours(v) {
 			for i := inverse[w]; i < k; {
 				next := ancestor[i]
 				ancestor[i] = k
@@ -65,7 +65,7 @@ func postorder(parent []int32) (post []int32) {
 // pp. 1075–1091). Row i of L is the subtree of those k < i with a[i][k] ≠ 0 and of the paths from
 // them to i; column counts are sums over subtrees of +1 at each leaf of a row's
 // subtree and -1 where two of its branches meet.
-func columnCounts(p *Pattern, perm, inverse, parent, post []int32) (count []int32) {
+func columnCounts(g *graph, perm, inverse, parent, post []int32) (count []int32) {
 	n := len(perm)
 	count = make([]int32, n)
 	first := make([]int32, n)    // postorder number of the first descendant
@@ -88,7 +88,7 @@ func columnCounts(p *Pattern, perm, inverse, parent, post []int32) (count []int3
 			count[parent[j]]-- // j itself is not in its parent's column
 		}
 		v := perm[j]
-		for _, w := range p.Adj[p.Ptr[v]:p.Ptr[v+1]] {
+		for _, w := range g.neighbours(v) {
 			i := inverse[w]
 			if i <= j || first[j] <= maxFirst[i] {
 				continue // not below the diagonal, or no leaf of row i's subtree
