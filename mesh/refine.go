@@ -416,5 +416,5 @@ func (r *refiner) estimate() (needed float64) {
 }
 
 // areaShare is the area per vertex of a refined plane, in squares of the longest
-// edge, as measured (TestRefineEstimate).
+// edge, as measured (TestRefineBudget holds it to that).
 const areaShare = 0.45
