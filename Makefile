@@ -19,6 +19,23 @@ help: ## list the targets
 build: ## build/heatskin
 	go build -trimpath -ldflags '-X heatskin/internal/cli.version=$(VERSION)' -o build/heatskin ./cmd/heatskin
 
+DEMO := build/demo
+CAP := testdata/demo/cap.stl
+
+demo: build ## the program at work on an insulator cap; tables and meshes in build/demo
+	@mkdir -p $(DEMO)
+	@printf '\nIs the mesh fit?\n\n'
+	build/heatskin check $(CAP) --unit mm
+	@printf '\nHow far along the skin from the conductor (loop 1)? "profile" is the length that was drawn.\n\n'
+	build/heatskin distance $(CAP) --unit mm --at-boundary 1 \
+	  --probe testdata/demo/probes.csv --probe-out $(DEMO)/creepage-probes.csv \
+	  --out $(DEMO)/creepage.csv --out $(DEMO)/creepage.ply --summary $(DEMO)/creepage.json
+	@printf '\nWhere is a unit of heat, released on the first shed, after 1, 10 and 30 minutes?\n\n'
+	build/heatskin kernel $(CAP) --unit mm --at-point 40,0,53 --time 60,600,1800 --diffusivity 0.7 --max-edge 1.5 \
+	  --probe testdata/demo/probes.csv --probe-out $(DEMO)/heat-probes.csv \
+	  --out $(DEMO)/heat.csv --out $(DEMO)/heat.ply --summary $(DEMO)/heat.json
+	@printf '\nLeft in $(DEMO): '; ls $(DEMO) | tr '\n' ' '; printf '\n'
+
 test: ## every test, then those of the packages with assembly again in plain Go
 	go test ./...
 	go test -tags purego $(PUREGO)

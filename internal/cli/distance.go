@@ -82,7 +82,11 @@ from has the distance inf.`,
 		if err != nil {
 			return err
 		}
-		g, err := prepare(ctx, j, part, &input, &refine, &source)
+		content := resolution(evenly)
+		if method == methodExact {
+			content = nil // its results do not depend on how flat faces are cut
+		}
+		g, err := prepare(ctx, j, part, &input, &refine, &source, content)
 		if err != nil {
 			return err
 		}

@@ -2,18 +2,27 @@ package cli
 
 import (
 	"context"
+	"errors"
 	"math"
+	"slices"
 
 	"heatskin/kernel"
 	"heatskin/mesh"
 )
 
-// refineBudget is how many vertices a refinement may make: what a workstation
-// with 16 GiB factors with room to spare.
-const refineBudget = 5_000_000
+const (
+	// refineBudget is how many vertices --max-edge may add: what a workstation with
+	// 16 GiB factors with room to spare.
+	refineBudget = 5_000_000
+	// autoVertices is how many vertices a part is cut into at least, unasked, where it
+	// has fewer: distances on coarse parts gain most up to here, and it takes a tenth
+	// of a second. autoBudget bounds what is added unasked.
+	autoVertices = 10_000
+	autoBudget   = 200_000
+)
 
 // A ground is what a command computes on: the mesh as it was read, the mesh with its
-// faces cut as finely as was asked, the sources placed on it, its intrinsic surface,
+// faces cut as finely as is needed, the sources placed on it, its intrinsic surface,
 // and for what needs it the heat solver.
 type ground struct {
 	original, part *mesh.Mesh
@@ -22,26 +31,31 @@ type ground struct {
 	solver         *kernel.Solver // after makeSolver
 }
 
-// prepare makes the ground of a command whose mesh has been read.
-func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags, refine *refineFlags, source *sourceFlags) (*ground, error) {
-	g := &ground{original: original, part: original}
-	var err error
-	if refine.maxEdge > 0 && !math.IsInf(refine.maxEdge, 1) {
-		j.clock.enter("refine")
-		if g.part, err = mesh.Refine(ctx, original, refine.maxEdge, refineBudget); err != nil {
-			return nil, refuse(err)
+// A resolution is the longest edge with which a computation is content on a surface.
+type resolution func(s *mesh.Surface) float64
+
+// evenly is content where no edge stands out, on a part of at least some vertices.
+func evenly(s *mesh.Surface) float64 { return s.ResolutionFor(autoVertices) }
+
+// forHeat also resolves heat at the shortest time, as far as the budget goes.
+func forHeat(diffusivity float64, times []float64) resolution {
+	return func(s *mesh.Surface) float64 {
+		area := 0.0
+		for f := range int32(s.NumFaces()) {
+			area += s.Area(f)
 		}
-		j.summary.Mesh.ComputedVertices = g.part.NumVertices()
-		j.summary.Mesh.ComputedFaces = g.part.NumTriangles()
-		j.note("faces cut to edges of at most %s: %d vertices, %d faces",
-			input.length(refine.maxEdge), g.part.NumVertices(), g.part.NumTriangles())
+		affordable := math.Sqrt(area / autoBudget)
+		return min(evenly(s), max(affordable, kernel.ResolvingEdge(diffusivity, slices.Min(times))))
 	}
-	j.clock.enter("place")
-	if g.data, err = source.place(ctx, j, original, g.part, input); err != nil {
-		return nil, err
-	}
+}
+
+// prepare makes the ground of a command whose mesh has been read. content says which
+// edges will do where the user does not; nil: any.
+func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags, refine *refineFlags, source *sourceFlags, content resolution) (*ground, error) {
+	g := &ground{original: original, part: original}
 	j.clock.enter("measure")
-	if g.surface, err = mesh.NewSurface(g.part); err != nil {
+	var err error
+	if g.surface, err = mesh.NewSurface(original); err != nil {
 		return nil, refuse(err)
 	}
 	size := j.summary.Mesh
@@ -49,7 +63,44 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 	for f := range int32(g.surface.NumFaces()) {
 		size.Area += number(g.surface.Area(f))
 	}
-	return g, nil
+	if err := g.refine(ctx, j, input, refine, content); err != nil {
+		return nil, err
+	}
+	j.clock.enter("place")
+	g.data, err = source.place(ctx, j, original, g.part, input)
+	return g, err
+}
+
+// refine cuts faces that are too large. What was not asked for is left alone where it
+// would be too much.
+func (g *ground) refine(ctx context.Context, j *job, input *meshFlags, refine *refineFlags, content resolution) error {
+	edge, budget := refine.maxEdge, refineBudget
+	if edge == 0 {
+		if content == nil {
+			return nil
+		}
+		edge, budget = content(g.surface), autoBudget
+	}
+	if !(slices.Max(g.surface.Length) > edge) {
+		return nil
+	}
+	j.clock.enter("refine")
+	part, err := mesh.Refine(ctx, g.original, edge, budget)
+	var tooMuch *mesh.BudgetError
+	switch {
+	case errors.As(err, &tooMuch) && refine.maxEdge == 0:
+		j.warn("faces are too large for their number, and cutting them is too much to do unasked: set --max-edge")
+		return nil
+	case err != nil:
+		return refuse(err)
+	}
+	g.part = part
+	j.summary.Mesh.ComputedVertices, j.summary.Mesh.ComputedFaces = part.NumVertices(), part.NumTriangles()
+	j.note("computed on faces cut to edges of at most %s: %d vertices in place of %d", input.length(edge), part.NumVertices(), g.original.NumVertices())
+	if g.surface, err = mesh.NewSurface(part); err != nil {
+		return refuse(err)
+	}
+	return nil
 }
 
 // makeSolver puts the sources into the surface's triangulation and prepares to solve

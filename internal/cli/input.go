@@ -70,7 +70,7 @@ type refineFlags struct {
 }
 
 func (r *refineFlags) register(flags *pflag.FlagSet) {
-	varFunc(flags, "max-edge", "", "cut faces until no edge is longer than `LENGTH`; none leaves the mesh alone",
+	varFunc(flags, "max-edge", "", "compute on faces cut until no edge is longer than `LENGTH`; none leaves them alone (default: as needed)",
 		func(text string) error {
 			if text == "none" {
 				r.maxEdge = math.Inf(1)

@@ -119,7 +119,7 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 		if err != nil {
 			return err
 		}
-		g, err := prepare(ctx, j, part, &input, &refine, &source)
+		g, err := prepare(ctx, j, part, &input, &refine, &source, forHeat(diffusivity, times.seconds))
 		if err != nil {
 			return err
 		}

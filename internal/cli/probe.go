@@ -153,10 +153,22 @@ func (j *job) noteProbes(p *probes) {
 		}
 	}
 	line(header)
+	size := 0.0 // of the coordinates, whose rounding a gap may be
+	for _, x := range p.points {
+		size = max(size, math.Abs(x[0]), math.Abs(x[1]), math.Abs(x[2]))
+	}
+	largest := make([]float64, len(p.fields))
+	for k, f := range p.fields {
+		for _, x := range f.Values {
+			if !math.IsInf(x, 0) && !math.IsNaN(x) {
+				largest[k] = max(largest[k], math.Abs(x))
+			}
+		}
+	}
 	for i, id := range p.ids {
-		row := []string{id, rounded(p.places[i].Gap)}
-		for _, f := range p.fields {
-			row = append(row, rounded(f.Values[i]))
+		row := []string{id, rounded(p.places[i].Gap, size)}
+		for k, f := range p.fields {
+			row = append(row, rounded(f.Values[i], largest[k]))
 		}
 		for _, column := range others {
 			row = append(row, p.table.Cell(i, column))
@@ -167,10 +179,16 @@ func (j *job) noteProbes(p *probes) {
 	j.clock.above(func() { _, _ = b.WriteTo(j.std.Err) })
 }
 
-// rounded is a number for reading.
-func rounded(x float64) string {
-	if math.IsInf(x, 1) {
+// rounded is a number for reading: six digits, and 0 where it is rounding beside a
+// number of the given size.
+func rounded(x, size float64) string {
+	switch {
+	case math.IsInf(x, 0):
 		return "inf"
+	case math.IsNaN(x):
+		return "nan"
+	case math.Abs(x) <= 1e-12*size:
+		return "0"
 	}
-	return strings.ToLower(strconv.FormatFloat(x, 'g', 6, 64))
+	return strconv.FormatFloat(x, 'g', 6, 64)
 }

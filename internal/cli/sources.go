@@ -4,6 +4,7 @@ import (
 	"context"
 	"errors"
 	"fmt"
+	"math"
 	"os"
 	"strings"
 
@@ -73,11 +74,19 @@ func (s *sourceFlags) place(ctx context.Context, j *job, original, part *mesh.Me
 	}
 	for _, d := range data {
 		j.summary.Sources = append(j.summary.Sources, sourceSummary{d.Name, number(d.Gap)})
-		if d.Gap > 0 {
+		if d.Gap > 1e-7*reach(part) { // single precision may move a point by that much
 			j.note("%s lies %s off the surface", d.Name, unit.length(d.Gap))
 		}
 	}
 	return data, nil
+}
+
+// reach is the largest coordinate of m.
+func reach(m *mesh.Mesh) (largest float64) {
+	for _, x := range m.Positions {
+		largest = max(largest, math.Abs(x))
+	}
+	return largest
 }
 
 func atVertex(text string) (asked, error) {

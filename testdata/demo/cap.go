@@ -43,7 +43,11 @@ func (p *profile) line(r, z float64) {
 	s := 0.0
 	if n := len(*p); n > 0 {
 		last := (*p)[n-1]
-		s = last.s + math.Hypot(r-last.r, z-last.z)
+		step := math.Hypot(r-last.r, z-last.z)
+		if step < 1e-9 {
+			return
+		}
+		s = last.s + step
 	}
 	*p = append(*p, place{r, z, s})
 }
