@@ -27,8 +27,8 @@ type ModesResult struct {
 // space.
 //
 // The method is shift-and-invert block Lanczos with full reorthogonalisation and thick
-// restart; it goes on until nothing below the last eigenvalue can have been missed
-// (see package internal/krylov). One factorisation, some 2.5·count + 100 solves, and
+// restart; it goes on from a random start to see whether eigenvalues have been missed
+// (see package internal/krylov). One factorisation, some 4·count + 100 solves, and
 // 2·count + 100 vectors of memory.
 //
 // The error is an *OptionError, a *FieldError, a *krylov.ConvergenceError or ctx.Err().
@@ -134,8 +134,8 @@ func (s *Solver) lanczos(ctx context.Context, r *ModesResult, count int, hold, f
 			}
 		},
 	}
-	// Residuals of 1e-8 leave eigenvalues good to their square, vectors to that over the
-	// gap to the next eigenvalue.
+	// This residual leaves eigenvalues good to its square, vectors to it over the gap to
+	// the next eigenvalue, both in terms of B's.
 	e, err := krylov.Smallest(ctx, pencil, count, 1e-9, func(fraction float64) { s.options.Progress("modes", fraction) })
 	if err != nil {
 		return err
