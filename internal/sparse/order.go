@@ -10,9 +10,9 @@ import (
 
 // Where dissection ends and how wide it looks. Chosen on spheres, tori, coils and plates of 1e4 to 7e5 vertices.
 const (
-	leafSize   = 120  // pieces up to this size are ordered by minimum degree
+	leafSize   = 100  // pieces up to this size are ordered by minimum degree
 	forkSize   = 4096 // pieces from this size on may go to another goroutine
-	bandLayers = 8    // on each side of a cut
+	bandLayers = 12   // on each side of a cut of a large piece; √m/10 if m vertices are fewer, but 3 at least
 	samples    = 256  // points that choose a direction
 	hubFactor  = 12   // a vertex with more than 40 + hubFactor·√n neighbours is kept for the end
 	stubborn   = 4096 // pieces up to this size that no cut helps are ordered by minimum degree as a whole
@@ -223,7 +223,7 @@ func (d *dissector) cut(t *tool, lo, hi int32) (left, right int32) {
 			}
 		}
 	}
-	t.cutter.separate(&d.graph, verts, d.part, id, d.side, d.index, bandLayers)
+	t.cutter.separate(&d.graph, verts, d.part, id, d.side, d.index, int(max(3, min(math.Sqrt(float64(m))/10, bandLayers))))
 	var count [3]int32
 	for _, v := range verts {
 		count[d.side[v]]++
