@@ -184,7 +184,7 @@ func TestReadTableRefusals(t *testing.T) {
 		{"id,x\n\"a\nb\",2\n2,1,5\n", "p.csv:4: want 2 cells, as in the header, got 3"},
 		{"id,x\n\"a\nb\",2\n2,nan\n", `p.csv:4, column x: want a finite number, got "nan"`},
 		{"id,x\n1,1e999\n", `p.csv:2, column x: want a finite number, got "1e999"`},
-		{"id,x\n1,0x10\n", `p.csv:2, column x: want a finite number, got "0x10"`},
+		{"id,x\n1,0x1p4\n", `p.csv:2, column x: want a finite number, got "0x1p4"`},
 		{"id,x\n1.5,1\n", `p.csv:2, column id: want a whole number from 0 to 9, got "1.5"`},
 		{"id,x\n9,1\n10,1\n", `p.csv:3, column id: want a whole number from 0 to 9, got "10"`},
 		{"id,x\n-1,1\n", `p.csv:2, column id: want a whole number from 0 to 9, got "-1"`},

@@ -43,9 +43,13 @@ func (s *source) number32(x *float64) bool {
 		}
 		v, n := shortDecimal(s.buf[s.pos:s.end])
 		if n > 0 && s.ends(n) {
-			if narrow, ok := roundTo32(v); ok {
+			// Rounding twice differs from rounding once only where the first result lies
+			// half-way between two singles and the number did not. shortDecimal's numbers
+			// are 0 or from 1e-22 to 1e38, well within the normal singles.
+			const tail = 1<<29 - 1 // the bits of a double's mantissa below a single's
+			if math.Float64bits(v)&tail != 1<<28 {
 				s.pos += n
-				*x = narrow
+				*x = float64(float32(v))
 				return true
 			}
 		}
@@ -148,20 +152,6 @@ func shortDecimal(b []byte) (v float64, n int) {
 
 var powersOfTen = [23]float64{1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11,
 	1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18, 1e19, 1e20, 1e21, 1e22}
-
-// roundTo32 rounds v, itself a number rounded to double, to single precision. ok is
-// false where rounding twice could differ from rounding once: where v lies half-way
-// between two singles (the number may not have), and outside the normal singles,
-// whose half-way points lie elsewhere.
-func roundTo32(v float64) (narrow float64, ok bool) {
-	const tail = 1<<29 - 1 // the bits of a double's mantissa below a single's
-	bits := math.Float64bits(v)
-	a := math.Abs(v)
-	if bits&tail == 1<<28 || a != 0 && a < 0x1p-126 || a > math.MaxFloat32 {
-		return 0, false
-	}
-	return float64(float32(v)), true
-}
 
 // whole reads this line's next word as a whole number from lo to hi.
 func (s *source) whole(x *int64, lo, hi int64) bool {

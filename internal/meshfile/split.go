@@ -87,17 +87,15 @@ func (c *cutter) cut(fan []int32) bool {
 	due := testsPerCorner * k
 	c.tests = due + c.spare
 	whole := true
-	at, stuck := int32(0), 0
+	at := int32(0)
 	for out := 0; k > 3; out += 3 {
-		for !c.bulges(at) || !c.empty(at) {
+		turned := 0
+		for c.tests > 0 && turned <= k && !(c.bulges(at) && c.empty(at)) {
 			at = c.next[at]
+			turned++
 			c.tests--
-			if stuck++; stuck > k || c.tests <= 0 {
-				whole = false
-				break
-			}
 		}
-		stuck = 0
+		whole = whole && c.tests > 0 && turned <= k // else any corner is cut off, to get on
 		p, n := c.prev[at], c.next[at]
 		fan[out], fan[out+1], fan[out+2] = c.corner[p], c.corner[at], c.corner[n]
 		c.next[p], c.prev[n] = n, p

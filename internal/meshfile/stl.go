@@ -12,9 +12,9 @@ import (
 // it reads neither a pipe nor a gzip stream, and it takes a binary file with one
 // stray byte behind it for ASCII. Its Writer cannot refuse a triangle, so a
 // coordinate that is not finite would come out without its place. It allocates 50
-// bytes for each triangle read (BenchmarkBinarySTL and its twin with the library
-// measure what that costs: about eight times the time). Of an ASCII file it reads the first solid
-// only, wants lower case, and names no line for a file cut short.
+// bytes for each triangle read, and takes about five times as long as the reader
+// below (BenchmarkBinarySTL and BenchmarkBinarySTLByLibrary). Of an ASCII file it
+// reads the first solid only, and it wants lower case.
 
 var little = binary.LittleEndian
 
