@@ -46,6 +46,7 @@ type table struct {
 var fieldFormats = map[string]func(io.Writer, *mesh.Mesh, []fieldfile.Column) error{
 	".csv": writeCSV,
 	".ply": fieldfile.WritePLY,
+	".vtu": fieldfile.WriteVTU,
 }
 
 func writeCSV(w io.Writer, m *mesh.Mesh, fields []fieldfile.Column) error {
