@@ -169,6 +169,7 @@ func (f *march) euler(ctx context.Context, steps int) error {
 	w, rhs, integral := make([]float64, n), slices.Clone(f.p), make([]float64, n)
 	factor := s.analysis.NewFactor()
 	now, tau := 0.0, 0.0
+	solve := factor.SolveTo
 	for k, i := range f.order {
 		if interval := f.times[i] - now; interval > 0 {
 			if next := interval / float64(steps); math.Abs(next-tau) > 1e-12*tau {
@@ -177,6 +178,7 @@ func (f *march) euler(ctx context.Context, steps int) error {
 					return err
 				}
 				r.Factorizations++
+				solve = f.solve(factor, tau, interval, 1e-10)
 			}
 			for step := range steps {
 				if err := ctx.Err(); err != nil {
@@ -185,7 +187,7 @@ func (f *march) euler(ctx context.Context, steps int) error {
 				for v, b := range f.b {
 					rhs[v] += tau * b
 				}
-				factor.SolveTo(w, rhs)
+				solve(w, rhs)
 				r.Solves++
 				for v, x := range w {
 					integral[v] += tau * x

@@ -63,11 +63,12 @@ func (f *march) space(ctx context.Context, factor *sparse.Factor, group []int) (
 	if err != nil {
 		return nil, err
 	}
+	solve := f.solve(factor, shift, f.times[group[len(group)-1]], f.tolerance)
 	pencil := &krylov.Pencil{
 		Dim: len(f.p), Shift: shift, Workers: s.options.Workers,
 		Mass: f.massTo,
 		Solve: func(dst, b []float64) {
-			factor.SolveTo(dst, b)
+			solve(dst, b)
 			r.Solves++
 		},
 		Deflate: func(x []float64) { s.centre(x, f.floating) },

@@ -38,12 +38,16 @@ func (f *flow) euler(ctx context.Context, steps int) error {
 			if fresh {
 				r.Factorizations++
 			}
+			solve := factor.SolveTo
+			if s.leak(f.warm)*interval > 1e-12 {
+				solve = (&refined{solver: s, factor: factor, mass: true, tau: tau, held: f.cold()}).SolveTo
+			}
 			for step := range steps {
 				if err := ctx.Err(); err != nil {
 					s.release(factor)
 					return err
 				}
-				factor.SolveTo(u, b)
+				solve(u, b)
 				r.Solves++
 				s.massTo(b, u)
 				s.options.Progress("heat", (float64(k)+float64(step+1)/float64(steps))/float64(len(f.order)))

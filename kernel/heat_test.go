@@ -205,8 +205,7 @@ func ringKernel(a float64, n int, t float64) []float64 {
 }
 
 // A torus of thin cells, up to 1:1e6: its kernel is the product of two rings' (Fourier),
-// so that the truth is known where dense eigenvalues are lost in rounding. Estimates
-// hold even where the thinness, not the tolerance, decides the error.
+// so that the truth is known where dense eigenvalues are lost in rounding.
 func TestEstimateHoldsOnThinCells(t *testing.T) {
 	const n, m = 40, 32
 	for _, b := range []float64{1, 1e-2, 1e-4, 1e-6} {
@@ -232,7 +231,7 @@ func TestEstimateHoldsOnThinCells(t *testing.T) {
 				if worst > r.ErrorEstimates[0]+1e-13 { // the Fourier sums' rounding
 					t.Errorf("b=%g t=%g tolerance %g: error %.3g, estimate %.3g", b, time, tolerance, worst, r.ErrorEstimates[0])
 				}
-				if b >= 1e-2 && r.ErrorEstimates[0] > tolerance && tolerance == 1e-8 {
+				if r.ErrorEstimates[0] > 1.01*tolerance {
 					t.Errorf("b=%g t=%g: estimate %.3g", b, time, r.ErrorEstimates[0])
 				}
 			}
@@ -443,12 +442,7 @@ func TestImplicitEulerKeepsTheMaximumPrinciple(t *testing.T) {
 				if r.Lowest[0] < 0 || r.Largest[0] > 1/s.lumped[9]*(1+1e-14) {
 					t.Errorf("t=%g steps=%d: values from %g to %g (start %g)", time, steps, r.Lowest[0], r.Largest[0], 1/s.lumped[9])
 				}
-				// Rounded entries of L leak heat, in proportion to time.
-				flow, err := s.newFlow(at(n, 9))
-				if err != nil {
-					t.Fatal(err)
-				}
-				if r.BalanceErrors[0] > 1e-13+time*flow.rounding() {
+				if r.BalanceErrors[0] > 1e-12 { // n rounded terms, each step
 					t.Errorf("t=%g steps=%d: balance error %g", time, steps, r.BalanceErrors[0])
 				}
 			}

@@ -51,11 +51,19 @@ func (f *flow) space(ctx context.Context, group []int, tolerance float64) (left 
 		return nil, err
 	}
 	defer s.release(factor)
+	// What does not vary is kept apart and leaks nothing.
+	rounding := s.leak(f.warm) * longest
+	solve := factor.SolveTo
+	var better *refined
+	if rounding > 0.1*tolerance {
+		better = &refined{solver: s, factor: factor, mass: true, tau: shift, held: f.cold()}
+		solve = better.SolveTo
+	}
 	process := krylov.NewProcess(&krylov.Pencil{
 		Dim: len(f.load), Shift: shift, Workers: s.options.Workers,
 		Mass: s.massTo,
 		Solve: func(dst, b []float64) {
-			factor.SolveTo(dst, b)
+			solve(dst, b)
 			r.Solves++
 		},
 		Deflate: func(x []float64) { s.centre(x, f.warm) },
@@ -68,7 +76,6 @@ func (f *flow) space(ctx context.Context, group []int, tolerance float64) (left 
 			uniform += q / s.area[c] * q
 		}
 	}
-	rounding := f.rounding()
 	pending := append([]int(nil), group...)
 	done := len(f.order) - f.missing()
 	for len(pending) > 0 {
@@ -88,7 +95,11 @@ func (f *flow) space(ctx context.Context, group []int, tolerance float64) (left 
 				continue
 			}
 			r.Fields[i] = f.field(process, y)
-			r.ErrorEstimates[i] = relative + rounding*f.reach[i]*norm/math.Sqrt(uniform+norm*norm) + 0x1p-50
+			varying := norm / math.Sqrt(uniform+norm*norm)
+			if better != nil { // an error of the solve counts as often as the shift goes into t
+				rounding = min(rounding, better.worst*longest/shift)
+			}
+			r.ErrorEstimates[i] = relative + rounding*varying + 0x1p-50
 			if math.IsNaN(relative) { // all digits lost; say so
 				r.ErrorEstimates[i] = math.Inf(1)
 			}
@@ -107,23 +118,6 @@ func (f *flow) space(ctx context.Context, group []int, tolerance float64) (left 
 	return pending, nil
 }
 
-// rounding is how far the rounded entries of L may shift a decay rate: an error of ε
-// L[i][i] in each diagonal entry, all of one sign, is a loss of heat at the rate of ε
-// ΣL[i][i] over the area, for a field that varies slowly. Only slivers by the thousand,
-// or aspect ratios beyond 1e4, make it felt. What does not vary is exempt, since it is
-// kept apart.
-func (f *flow) rounding() float64 {
-	s := f.solver
-	sum, area := 0.0, 0.0
-	for i, c := range s.component {
-		if c >= 0 && f.warm[c] {
-			sum += s.stiffness.Diag[i]
-			area += s.lumped[i]
-		}
-	}
-	return 0x1p-52 * sum / area
-}
-
 // field is the result with coefficients y: what varies, and the mean that stays.
 func (f *flow) field(process *krylov.Process, y []float64) []float64 {
 	s := f.solver
@@ -137,6 +131,15 @@ func (f *flow) field(process *krylov.Process, y []float64) []float64 {
 	}
 	f.blank(u)
 	return u
+}
+
+// cold marks the rows that shifts holds.
+func (f *flow) cold() []bool {
+	held := make([]bool, len(f.load))
+	for i, c := range f.solver.component {
+		held[i] = c < 0 || !f.warm[c]
+	}
+	return held
 }
 
 // missing is how many fields are still to be filled in.

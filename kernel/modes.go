@@ -134,6 +134,10 @@ func (s *Solver) lanczos(ctx context.Context, r *ModesResult, count int, hold, f
 			}
 		},
 	}
+	if s.leak(nil)*slices.Max(s.area) > 1e-8 {
+		better := &refined{solver: s, factor: factor, mass: true, tau: shift, held: hold}
+		pencil.Solve, pencil.SolveMany = better.SolveTo, nil
+	}
 	// This residual leaves eigenvalues good to its square, vectors to it over the gap to
 	// the next eigenvalue, both in terms of B's.
 	e, err := krylov.Smallest(ctx, pencil, count, 1e-9, func(fraction float64) { s.options.Progress("modes", fraction) })

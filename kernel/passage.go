@@ -12,7 +12,7 @@ type PassageResult struct {
 	MeanTime  []float64   // by start vertex; 0 on targets, +Inf where no target can be reached
 	Reach     [][]float64 // by target, then start vertex: probability of reaching it first
 	Unreached int         // components without a target
-	Residual  float64     // largest backward error of the solves
+	Residual  float64     // largest relative error that a solve may have been left with
 	Solves    int
 	Warnings  []string
 }
@@ -40,7 +40,7 @@ func (e *TargetError) Error() string {
 //
 // A vertex counts as a target of zero size only on a mesh: in the plane a particle
 // never hits a point, and the mean time grows like the logarithm of 1/h. One
-// factorisation, and one solve for the time and for each target but one. Reach is nil
+// factorisation, and some two solves for the time and for each target but one. Reach is nil
 // with a single target. NaN at vertices in no triangle. O(n log n) per solve.
 //
 // The error is a *TargetError, an *OptionError or ctx.Err().
@@ -95,8 +95,8 @@ func (s *Solver) Passage(ctx context.Context, targets [][]int32, diffusivity flo
 			b[v] = m
 		}
 	}
-	r.Residual = factor.SolveRefinedTo(r.MeanTime, b)
-	r.Solves++
+	solve := &refined{solver: s, factor: factor, tau: 1, held: held}
+	solve.SolveTo(r.MeanTime, b)
 	for v, c := range s.component {
 		switch {
 		case c < 0:
@@ -115,15 +115,18 @@ func (s *Solver) Passage(ctx context.Context, targets [][]int32, diffusivity flo
 	if r.Unreached > 0 {
 		r.Warnings = append(r.Warnings, fmt.Sprintf("%d of %d components have no target: the mean time there is infinite", r.Unreached, len(reached)))
 	}
-	if len(targets) == 1 {
-		return r, nil
+	if len(targets) > 1 {
+		if err := s.reach(ctx, r, len(targets), owner, held, reached, solve); err != nil {
+			return nil, err
+		}
 	}
-	return r, s.reach(ctx, r, len(targets), owner, held, reached, factor.SolveRefinedTo)
+	r.Residual, r.Solves = solve.worst, solve.solves
+	return r, nil
 }
 
 // reach fills in the probabilities. The last target's is what the others leave, so
 // that they add up to 1.
-func (s *Solver) reach(ctx context.Context, r *PassageResult, count int, owner []int32, held, reached []bool, solve func(dst, b []float64) float64) error {
+func (s *Solver) reach(ctx context.Context, r *PassageResult, count int, owner []int32, held, reached []bool, solve *refined) error {
 	n := len(owner)
 	b := make([]float64, n)
 	left := make([]float64, n)
@@ -151,8 +154,7 @@ func (s *Solver) reach(ctx context.Context, r *PassageResult, count int, owner [
 					}
 				}
 			}
-			r.Residual = max(r.Residual, solve(p, b))
-			r.Solves++
+			solve.SolveTo(p, b)
 			for v := range left {
 				left[v] -= p[v]
 			}

@@ -94,7 +94,9 @@ type system struct {
 	solver   *Solver
 	problem  *Problem
 	k        *sparse.Matrix
-	held     []bool // also vertices in no triangle
+	d        float64   // diffusivity
+	loss     []float64 // Σ weights
+	held     []bool    // also vertices in no triangle
 	lift     []float64
 	p, b     []float64
 	put      []float64 // heat given per unit of time at each vertex, by Rate and ambients; on held rows too
@@ -112,7 +114,7 @@ func (s *Solver) newSystem(pr *Problem) (*system, error) {
 		return nil, &OptionError{"diffusivity", "a finite number above 0", fmt.Sprint(d)}
 	}
 	n := len(s.lumped)
-	y := &system{solver: s, problem: pr, held: make([]bool, n), lift: make([]float64, n),
+	y := &system{solver: s, problem: pr, d: d, loss: make([]float64, n), held: make([]bool, n), lift: make([]float64, n),
 		p: make([]float64, n), b: make([]float64, n), put: make([]float64, n), floating: make([]bool, len(s.area))}
 	if err := y.check(); err != nil {
 		return nil, err
@@ -141,6 +143,7 @@ func (s *Solver) newSystem(pr *Problem) (*system, error) {
 		for _, e := range pr.Exchanges {
 			if w := e.Weight[i]; w > 0 {
 				y.k.Diag[i] += w
+				y.loss[i] += w
 				y.put[i] += w * e.Ambient
 				y.floating[c] = false
 				y.size = max(y.size, math.Abs(e.Ambient))
@@ -245,6 +248,24 @@ func (y *system) matrix(tau float64) *sparse.Matrix {
 		a.Off[i] += m
 	}
 	return a
+}
+
+// solve returns the solve with M + τK, given its factor: refined if heat might leak
+// within time t by more than the tolerance.
+func (y *system) solve(factor *sparse.Factor, tau, t, tolerance float64) func(dst, b []float64) {
+	if y.solver.leak(nil)*y.d*t <= 0.1*tolerance {
+		return factor.SolveTo
+	}
+	return y.refine(factor, true, tau).SolveTo
+}
+
+// refine is the refined solve with M + τK, or with τK alone.
+func (y *system) refine(factor *sparse.Factor, mass bool, tau float64) *refined {
+	loss := make([]float64, len(y.loss))
+	for i, w := range y.loss {
+		loss[i] = tau * w
+	}
+	return &refined{solver: y.solver, factor: factor, mass: mass, tau: tau * y.d, loss: loss, held: y.held}
 }
 
 // massTo sets dst = M x on the free rows and 0 on held ones; x is 0 there.

@@ -17,13 +17,13 @@ func (e *SteadyError) Error() string {
 	return fmt.Sprintf("component %d gains heat at the rate %g and has no held or losing vertex: there is no steady state; hold an edge, or let faces or edges lose heat", e.Component, e.Rate)
 }
 
-// Steady returns the field that a problem tends to as time goes on, and the residual
-// of its equations over their largest term. Components with nothing held and nothing
+// Steady returns the field that a problem tends to as time goes on, and the
+// relative error that the solve may have left in it. Components with nothing held and nothing
 // lost tend to the mean of their heat, if what is put in there adds up to 0. NaN at
-// vertices in no triangle. One factorisation and one solve.
+// vertices in no triangle. One factorisation and some two solves.
 //
 // The error is a *SteadyError, an *OptionError, a *FieldError or ctx.Err().
-func (s *Solver) Steady(ctx context.Context, pr *Problem) (u []float64, residual float64, err error) {
+func (s *Solver) Steady(ctx context.Context, pr *Problem) (u []float64, solveError float64, err error) {
 	y, err := s.newSystem(pr)
 	if err != nil {
 		return nil, 0, err
@@ -57,7 +57,10 @@ func (s *Solver) Steady(ctx context.Context, pr *Problem) (u []float64, residual
 		return nil, 0, err
 	}
 	w := make([]float64, len(b))
-	residual = factor.SolveRefinedTo(w, b)
+	y.held = held
+	f := y.refine(factor, false, 1)
+	f.SolveTo(w, b)
+	solveError = f.worst
 	s.centre(w, y.floating)
 	for i, c := range s.component {
 		switch {
@@ -69,5 +72,5 @@ func (s *Solver) Steady(ctx context.Context, pr *Problem) (u []float64, residual
 			w[i] += y.lift[i]
 		}
 	}
-	return w, residual, nil
+	return w, solveError, nil
 }
