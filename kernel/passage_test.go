@@ -135,7 +135,12 @@ func TestPassageAcrossAStrip(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
-			tolerance := 1e-12 // condition 1e3; the refined solve does not feel the thinness
+			// Condition 1e3. Edge lengths, which are all that the surface keeps, hold the
+			// height of a cell of 1:15000 to 1e-7 only.
+			tolerance := 1e-12
+			if width < 1e-3 {
+				tolerance = 1e-7
+			}
 			if row["boundary"] != "both ends absorb" {
 				tolerance = 1e-4
 			}
