@@ -1,5 +1,7 @@
 package geodesic
 
+import "math"
+
 // An envelope is the windows on a halfedge in order along it: no two overlap, each is
 // the shortest known on its piece.
 type envelope []window
@@ -12,12 +14,40 @@ const (
 	// Windows narrower than this (of the halfedge) are dropped. What falls into the
 	// cracks is caught by slack.
 	narrow = 1e-14
+	// Neighbours whose sources differ by less than this (relative) are one window that
+	// a flat vertex had split: they are joined again, or flat parts would fill up with
+	// windows. Of a real bend at the vertex not more than this is lost.
+	sameSource = 2e-14
 )
+
+// join makes one window of last and w, which begins where last ends, if both see one
+// source.
+func (last *window) join(w *window, thin float64) bool {
+	if last.flags != w.flags || w.b0-last.b1 > 100*thin {
+		return false
+	}
+	dx, dy, df := math.Abs(w.x-last.x), math.Abs(w.y-last.y), math.Abs(w.far-last.far)
+	if w.flags&parallel != 0 {
+		if dx+dy > sameSource || df > sameSource*math.Abs(w.far) {
+			return false
+		}
+	} else if df != 0 || dx+dy > sameSource*(math.Abs(w.x)+w.y) {
+		return false
+	}
+	if w.b1-w.b0 > last.b1-last.b0 { // keep the source of the wider one
+		last.x, last.y, last.far = w.x, w.y, w.far
+	}
+	last.b1 = max(last.b1, w.b1)
+	return true
+}
 
 // add takes w into the envelope where it is shortest. Cost is in proportion to the
 // windows to the right of w's left end: O(1) if windows come in order.
 func (e *envelope) add(w window, thin float64, spare *envelope) {
 	n := len(*e)
+	if n > 0 && w.b0 >= (*e)[n-1].b0 && (*e)[n-1].join(&w, thin) {
+		return
+	}
 	if n == 0 || (*e)[n-1].b1 <= w.b0+thin {
 		if w.b1-w.b0 > thin {
 			*e = append(*e, w)

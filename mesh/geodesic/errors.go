@@ -16,6 +16,14 @@ func (e *DatumError) Error() string {
 	return fmt.Sprintf("%s: want %s, got %s", name, e.Want, e.Got)
 }
 
+// A SizeError is a mesh so large or so small that products of four lengths leave the
+// range of numbers.
+type SizeError struct{ Extent float64 }
+
+func (e *SizeError) Error() string {
+	return fmt.Sprintf("exact distances: want a mesh between 1e-70 and 1e70 across, got one of %g; scale it", e.Extent)
+}
+
 // A MemoryError is a wave that would have outgrown Options.MaxBytes. Distances up to
 // Reach were done.
 type MemoryError struct {

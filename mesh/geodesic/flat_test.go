@@ -156,21 +156,12 @@ func TestPlatesWithNotchAndSlit(t *testing.T) {
 // testdata/reference/distance_prism.csv: a prism's side unrolled.
 func TestPrisms(t *testing.T) {
 	for i, row := range table(t, "distance_prism.csv") {
-		n, k, dz := int(number(t, row["n_sides"])), int(number(t, row["k_sides_apart"])), number(t, row["dz"])
-		const rows = 6
+		radius, n := number(t, row["R"]), int(number(t, row["n_sides"]))
+		dz := number(t, row["dz"])
+		sin, cos := math.Sincos(2 * math.Pi * number(t, row["k_sides_apart"]) / float64(n))
 		for _, jitter := range []float64{0, 0.2} {
-			m := meshtest.Cylinder(number(t, row["R"]), dz+0.01, n, rows, jitter, 5)
-			if dz > 0 {
-				m = meshtest.Cylinder(number(t, row["R"]), dz, n, rows, jitter, 5)
-			}
-			height := dz
-			if dz == 0 {
-				height = 0
-			}
-			radius := number(t, row["R"])
-			from := at(t, m, [3]float64{radius, 0, 0})
-			sin, cos := math.Sincos(2 * math.Pi * float64(k) / float64(n))
-			to := at(t, m, [3]float64{radius * cos, radius * sin, height})
+			m := meshtest.Cylinder(radius, max(dz, 1), n, 6, jitter, 5)
+			from, to := at(t, m, [3]float64{radius, 0, 0}), at(t, m, [3]float64{radius * cos, radius * sin, dz})
 			near(t, fmt.Sprintf("row %d, jitter %g", i, jitter), between(t, geodesic.NewSolver(m), from, to),
 				number(t, row["distance_on_mesh"]), rounding)
 		}

@@ -28,8 +28,7 @@ func Path(ctx context.Context, m *mesh.Mesh, from, to []mesh.Datum) (*Line, erro
 // Path is a shortest line from any of the data in from to any of those in to; nil if
 // no path leads there (within opt.Radius). It runs the wave until the target is
 // reached and follows straight lines back, unrolling triangles as it goes. Of opt it
-// heeds Radius and MaxBytes. The error is a *DatumError, a *MemoryError, a *TraceError
-// or ctx.Err().
+// heeds Radius and MaxBytes. Errors are those of Spread, and a *TraceError.
 func (s *Solver) Path(ctx context.Context, from, to []mesh.Datum, opt Options) (*Line, error) {
 	v, err := s.start(from, Options{Targets: to, Any: true, Radius: opt.Radius, MaxBytes: opt.MaxBytes}, true)
 	if err != nil {

@@ -1,77 +1,82 @@
 package geodesic
 
-import "math/bits"
+import (
+	"math/bits"
+	"unsafe"
+)
 
-// A pool holds the envelopes of the halfedges on the wave's front: runs of windows in
-// one slab, each in a block of a power of two, so that blocks can be used again.
+// A pool holds the envelopes of the halfedges on the wave's front. They lie in blocks
+// of a power of two of windows, which are used again; the collector never sees them go.
 type pool struct {
-	slab  []window
-	free  [40][]int // offsets of free blocks by the logarithm of their size
-	lists []list
-	spare []int32 // unused numbers of lists
+	lists  []envelope   // by number of the envelope
+	unused []int32      // numbers free for use
+	blocks [][]envelope // free blocks, by the logarithm of their size
+	fresh  envelope     // what is left of the newest slab
+	size   int64        // bytes of all slabs
 }
 
-// A list is an envelope in the pool.
-type list struct {
-	offset int
-	count  int
-	log    int // the block holds 1<<log windows
-}
+const slabWindows = 1 << 12
 
-// block finds room for n >= 1 windows.
-func (p *pool) block(n int) (offset, log int) {
-	log = bits.Len(uint(n - 1))
-	if f := p.free[log]; len(f) > 0 {
-		offset = f[len(f)-1]
-		p.free[log] = f[:len(f)-1]
-		return offset, log
+// block is an empty envelope with room for n windows, n >= 1.
+func (p *pool) block(n int) envelope {
+	log := bits.Len(uint(n - 1))
+	for len(p.blocks) <= log {
+		p.blocks = append(p.blocks, nil)
 	}
-	offset = len(p.slab)
-	size := 1 << log
-	if len(p.slab)+size > cap(p.slab) {
-		grown := make([]window, len(p.slab), len(p.slab)+len(p.slab)/2+size+1024)
-		copy(grown, p.slab)
-		p.slab = grown
+	if free := p.blocks[log]; len(free) > 0 {
+		b := free[len(free)-1]
+		p.blocks[log] = free[:len(free)-1]
+		return b
 	}
-	p.slab = p.slab[:len(p.slab)+size]
-	return offset, log
-}
-
-// windows is the envelope of list i, to be read or changed in place.
-func (p *pool) windows(i int32) envelope {
-	l := &p.lists[i]
-	return envelope(p.slab[l.offset : l.offset+l.count])
-}
-
-// store makes e the envelope of list i; i below 0 asks for a new list. It returns i.
-func (p *pool) store(i int32, e envelope) int32 {
-	if i < 0 {
-		if n := len(p.spare); n > 0 {
-			i = p.spare[n-1]
-			p.spare = p.spare[:n-1]
-		} else {
-			i = int32(len(p.lists))
-			p.lists = append(p.lists, list{})
+	n = 1 << log
+	if n > len(p.fresh) {
+		for len(p.fresh) > 0 { // leave nothing behind
+			log := bits.Len(uint(len(p.fresh))) - 1
+			p.blocks[log] = append(p.blocks[log], p.fresh[:0:1<<log])
+			p.fresh = p.fresh[1<<log:]
 		}
-		p.lists[i] = list{log: -1}
+		p.fresh = make(envelope, max(n, slabWindows))
+		p.size += int64(len(p.fresh)) * int64(unsafe.Sizeof(window{}))
 	}
-	l := &p.lists[i]
-	if n := len(e); n > 0 && (l.log < 0 || n > 1<<l.log) {
-		if l.log >= 0 {
-			p.free[l.log] = append(p.free[l.log], l.offset)
-		}
-		l.offset, l.log = p.block(n)
+	b := p.fresh[:0:n]
+	p.fresh = p.fresh[n:]
+	return b
+}
+
+// free takes back a block.
+func (p *pool) free(b envelope) {
+	if cap(b) > 0 {
+		log := bits.Len(uint(cap(b))) - 1
+		p.blocks[log] = append(p.blocks[log], b[:0])
 	}
-	copy(p.slab[l.offset:], e)
-	l.count = len(e)
+}
+
+// add makes a copy of e an envelope of its own and gives its number.
+func (p *pool) add(e envelope) (i int32) {
+	if n := len(p.unused); n > 0 {
+		i = p.unused[n-1]
+		p.unused = p.unused[:n-1]
+	} else {
+		i = int32(len(p.lists))
+		p.lists = append(p.lists, nil)
+	}
+	p.set(i, e)
 	return i
 }
 
-// drop frees list i.
-func (p *pool) drop(i int32) {
-	l := &p.lists[i]
-	if l.log >= 0 {
-		p.free[l.log] = append(p.free[l.log], l.offset)
+// set makes a copy of e envelope i.
+func (p *pool) set(i int32, e envelope) {
+	b := p.lists[i]
+	if len(e) > cap(b) {
+		p.free(b)
+		b = p.block(len(e))
 	}
-	p.spare = append(p.spare, i)
+	p.lists[i] = append(b[:0], e...)
+}
+
+// drop forgets envelope i.
+func (p *pool) drop(i int32) {
+	p.free(p.lists[i])
+	p.lists[i] = nil
+	p.unused = append(p.unused, i)
 }

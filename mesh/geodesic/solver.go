@@ -16,11 +16,12 @@ type Solver struct {
 	// triangle at v; triangles with a repeated corner are left out.
 	first  []int32 // length NumVertices+1
 	corner []int32
+	extent float64 // largest side of the box around the mesh
 }
 
 // NewSolver prepares m, which must not change after, in O(n+m).
 func NewSolver(m *mesh.Mesh) *Solver {
-	s := &Solver{mesh: m, glue: mesh.Glue(m)}
+	s := &Solver{mesh: m, glue: mesh.Glue(m), extent: extent(m)}
 	n := m.NumVertices()
 	t := m.Triangles
 	s.first = make([]int32, n+1)
@@ -47,6 +48,17 @@ func NewSolver(m *mesh.Mesh) *Solver {
 	return s
 }
 
+func extent(m *mesh.Mesh) (e float64) {
+	for axis := range 3 {
+		least, most := math.Inf(1), math.Inf(-1)
+		for i := axis; i < len(m.Positions); i += 3 {
+			least, most = min(least, m.Positions[i]), max(most, m.Positions[i])
+		}
+		e = max(e, most-least)
+	}
+	return e
+}
+
 func repeated(corners []int32) bool {
 	return corners[0] == corners[1] || corners[1] == corners[2] || corners[2] == corners[0]
 }
@@ -59,9 +71,13 @@ func (s *Solver) corners(v int32) []int32 { return s.corner[s.first[v]:s.first[v
 // that round-off may leave between the windows on its two sides.
 const nearlyFlat = 1e-7
 
+// tinySide is the ratio of two sides from which round-off leaves nothing of the angle
+// between them; nearlyFlat absorbs what it does to longer ones.
+const tinySide = 1e-8
+
 // sendsOn tells whether a shortest path may bend at v: where the total angle exceeds
-// a full turn (half a turn on a boundary), and where sheets meet in v alone or along
-// an edge of more than two triangles.
+// a full turn (half a turn on a boundary), where sheets meet in v alone or along an edge
+// of more than two triangles, and where the angle cannot be told.
 func (s *Solver) sendsOn(v int32) bool {
 	corners := s.corners(v)
 	if len(corners) == 0 {
@@ -78,7 +94,11 @@ func (s *Solver) sendsOn(v int32) bool {
 				return true
 			}
 		}
-		angle += s.cornerAngle(out)
+		l := s.lay(out)
+		if l.length <= tinySide*l.toA || l.toA <= tinySide*l.length {
+			return true
+		}
+		angle += math.Atan2(l.y, l.x)
 	}
 	// One fan around v? Turn from the first corner, both ways if there is a rim.
 	seen := s.turn(corners[0], corners[0])
@@ -119,15 +139,6 @@ func (s *Solver) turn(corner, side int32) int {
 		}
 		count++
 	}
-}
-
-// cornerAngle is the angle of the triangle at the tail of h.
-func (s *Solver) cornerAngle(h int32) float64 {
-	l := s.lay(h)
-	if l.degenerate || l.toA == 0 {
-		return 0
-	}
-	return math.Atan2(l.y, l.x)
 }
 
 // flat tells whether halfedge h's triangle has no area.

@@ -183,10 +183,10 @@ func (v *wave) sourceEdge(h int32, datum int32) {
 	}
 	for p := h; ; {
 		v.receive(p, envelope{{b1: length, y: 1, flags: parallel}}, narrow*length)
-		if math.IsInf(v.waits[p], 1) {
-			v.events.push(event{length / 2, p})
+		if v.waits[p] > 0 {
+			v.waits[p] = 0
+			v.events.push(event{0, p})
 		}
-		v.waits[p] = 0
 		if v.lines != nil {
 			v.lines[p] = datum
 		}

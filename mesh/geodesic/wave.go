@@ -55,10 +55,11 @@ type wave struct {
 	waits    []float64 // by halfedge: the least distance of windows that wait to cross; +Inf if none
 	pool     pool
 	events   eventHeap
-	old      []int32 // halfedges crossed whose envelopes are kept
+	old      []int32 // halfedges that have an envelope
+	sweepAt  int     // length of old at which to sweep it
 	now      float64 // no window still to cross is nearer than this
-	survey   int     // turns until now is found anew
 	crossed  int64
+	tables   int64 // bytes of what is made at the start
 	peak     int64
 
 	left, right, merged, spare envelope // scratch
@@ -79,7 +80,7 @@ const (
 )
 
 // Spread lets the wave run from the data over the mesh. The error is a *DatumError, a
-// *MemoryError or ctx.Err(). Time is about that of 10 to 50 runs of Dijkstra's
+// *SizeError, a *MemoryError or ctx.Err(). Time is about that of 10 to 50 runs of Dijkstra's
 // algorithm along the edges; memory 50 bytes a triangle and 8 a vertex, plus 48 for
 // each window on the wave's front.
 func (s *Solver) Spread(ctx context.Context, data []mesh.Datum, opt Options) (*Wave, error) {
@@ -104,9 +105,19 @@ func Field(ctx context.Context, m *mesh.Mesh, data []mesh.Datum, opt Options) ([
 }
 
 func (s *Solver) start(data []mesh.Datum, opt Options, lines bool) (*wave, error) {
+	if s.extent > 0 && !(s.extent > 1e-70 && s.extent < 1e70) {
+		return nil, &SizeError{s.extent}
+	}
 	n, halfedges := s.mesh.NumVertices(), len(s.mesh.Triangles)
+	tables := int64(n)*9 + int64(halfedges)*12
+	if lines {
+		tables += int64(n) * int64(unsafe.Sizeof(parent{}))
+	}
+	if opt.MaxBytes > 0 && tables > opt.MaxBytes {
+		return nil, &MemoryError{Bytes: tables, Limit: opt.MaxBytes}
+	}
 	v := &wave{
-		Solver: s, opt: opt, radius: opt.Radius,
+		Solver: s, opt: opt, radius: opt.Radius, tables: tables,
 		distance: make([]float64, n),
 		sends:    make([]uint8, n),
 		list:     make([]int32, halfedges),
@@ -134,33 +145,41 @@ func (s *Solver) start(data []mesh.Datum, opt Options, lines bool) (*wave, error
 	return v, nil
 }
 
-// run carries windows on until none is left or all that was asked for is known.
+// run carries windows on, nearest first, until none is left or all that was asked
+// for is known.
 //
-// Halfedges wait in order of the farthest that any of their points can be, so that
-// windows from both sides of the triangle behind have come together before they
-// cross. That makes the order not quite that of distance: now, the least distance
-// still to come, is found by going through all that wait, once in as many turns.
+// All windows that wait on a halfedge cross together when the nearest of them is the
+// nearest of all. By then nearly all that will come through that halfedge have come:
+// on smooth meshes less than one window in a thousand crosses in vain.
 func (v *wave) run(ctx context.Context) error {
 	halfedges := int32(len(v.waits))
 	inf := math.Inf(1)
-	for ; len(v.events) > 0; v.survey-- {
-		if v.survey <= 0 {
+	for turn := 0; len(v.events) > 0; turn++ {
+		if turn%1024 == 0 {
 			if err := ctx.Err(); err != nil {
 				return err
 			}
-			v.look()
 			if err := v.weigh(); err != nil {
 				return err
 			}
-			if v.done() {
-				return nil
-			}
+		}
+		if len(v.old) > v.sweepAt && !v.opt.Keep {
+			v.sweep()
 		}
 		e := v.events.pop()
 		if e.id < halfedges {
+			if e.key != v.waits[e.id] {
+				continue // came forward since, and has crossed
+			}
+			if v.now = e.key; v.done() {
+				return nil
+			}
 			v.waits[e.id] = inf
 			v.cross(e.id)
 		} else if vertex := e.id - halfedges; v.sends[vertex] == sendsOn && e.key == v.distance[vertex] {
+			if v.now = e.key; v.done() {
+				return nil
+			}
 			v.sends[vertex] = sent
 			v.send(vertex)
 		}
@@ -169,32 +188,20 @@ func (v *wave) run(ctx context.Context) error {
 	return nil
 }
 
-// look finds how near the nearest window still to cross is, and forgets envelopes
-// that no window can touch any more.
-func (v *wave) look() {
-	halfedges := int32(len(v.waits))
-	now := math.Inf(1)
-	for _, e := range v.events {
-		if e.id < halfedges {
-			now = min(now, v.waits[e.id])
+// sweep forgets the envelopes that no window can touch any more: all that is still
+// to come is farther than any point of the halfedge.
+func (v *wave) sweep() {
+	kept := v.old[:0]
+	for _, h := range v.old {
+		if v.waits[h] < math.Inf(1) || v.bound(h) >= v.now {
+			kept = append(kept, h)
 		} else {
-			now = min(now, e.key)
+			v.pool.drop(v.list[h] - 1)
+			v.list[h] = 0
 		}
 	}
-	v.now = max(v.now, now)
-	if !v.opt.Keep {
-		kept := v.old[:0]
-		for _, h := range v.old {
-			if v.waits[h] < math.Inf(1) || v.bound(h) >= v.now {
-				kept = append(kept, h)
-			} else {
-				v.pool.drop(v.list[h] - 1)
-				v.list[h] = 0
-			}
-		}
-		v.old = kept
-	}
-	v.survey = max(64, len(v.events)+len(v.old)/2)
+	v.old = kept
+	v.sweepAt = max(256, len(kept)+len(kept)/4)
 }
 
 // bound is a distance that no point of halfedge h exceeds: one goes there from its
@@ -206,10 +213,7 @@ func (v *wave) bound(h int32) float64 {
 
 // weigh compares working memory with the limit.
 func (v *wave) weigh() error {
-	bytes := int64(cap(v.pool.slab))*int64(unsafe.Sizeof(window{})) + int64(cap(v.pool.lists))*32 +
-		int64(cap(v.events))*16 + int64(cap(v.old))*4 +
-		int64(len(v.distance))*9 + int64(len(v.list))*12 +
-		int64(len(v.parents))*int64(unsafe.Sizeof(parent{}))
+	bytes := v.tables + v.pool.size + int64(cap(v.pool.lists))*32 + int64(cap(v.events))*16 + int64(cap(v.old))*4
 	v.peak = max(v.peak, bytes)
 	if v.opt.MaxBytes > 0 && bytes > v.opt.MaxBytes {
 		return &MemoryError{Bytes: bytes, Limit: v.opt.MaxBytes, Reach: v.now}
@@ -227,10 +231,44 @@ func (v *wave) result() *Wave {
 	}
 	w.Targets = v.targetDistances(w.Reach)
 	if !v.opt.Keep {
-		v.pool, v.list, v.waits = pool{}, nil, nil
+		w.wave = nil
 	}
-	v.events, v.old = nil, nil
+	v.events, v.old, v.waits = nil, nil, nil
 	return w
+}
+
+// At is the exact distance of any point of the mesh, +Inf where no path leads or beyond
+// Reach. It needs a wave spread with Options.Keep, and panics without. Its cost is that
+// of the windows on three edges. It may be called from several goroutines.
+func (w *Wave) At(p mesh.Point) float64 {
+	v := w.wave
+	if v == nil {
+		panic("geodesic: Wave.At needs Options.Keep")
+	}
+	d := math.Inf(1)
+	for k := range int32(3) {
+		d = min(d, w.Distances[v.mesh.Triangles[3*p.Triangle+k]]+v.toCorner(p.Triangle, p.Weights, k))
+	}
+	for _, q := range v.points[p.Triangle] {
+		d = min(d, v.apart(p.Triangle, p.Weights, q.weights))
+	}
+	for h := 3 * p.Triangle; h < 3*p.Triangle+3; h++ {
+		if v.list[h] == 0 {
+			continue
+		}
+		l := v.lay(h)
+		x, y := l.point(h, p.Weights)
+		windows := v.pool.lists[v.list[h]-1]
+		for i := range windows {
+			if s, ok := windows[i].straight(x, y, l.length); ok {
+				d = min(d, s)
+			}
+		}
+	}
+	if d > w.Reach {
+		return math.Inf(1)
+	}
+	return d
 }
 
 // hasArea tells whether vertex i lies in a triangle of positive area.
@@ -347,10 +385,8 @@ func (v *wave) deliver(g *gate) {
 		}
 		v.receive(p, *g.run, g.thin)
 		if g.least < v.waits[p] {
-			if math.IsInf(v.waits[p], 1) {
-				v.events.push(event{(g.dt + g.dh + g.length) / 2, p})
-			}
 			v.waits[p] = g.least
+			v.events.push(event{g.least, p})
 		}
 	}
 }
@@ -359,11 +395,11 @@ func (v *wave) deliver(g *gate) {
 func (v *wave) receive(h int32, run envelope, thin float64) {
 	i := v.list[h] - 1
 	if i < 0 {
-		v.list[h] = v.pool.store(i, run) + 1
+		v.list[h] = v.pool.add(run) + 1
 		v.old = append(v.old, h)
 		return
 	}
-	have := v.pool.windows(i)
+	have := v.pool.lists[i]
 	merged := v.merged[:0]
 	for len(have) > 0 || len(run) > 0 {
 		if len(run) == 0 || len(have) > 0 && have[0].b0 <= run[0].b0 {
@@ -375,7 +411,7 @@ func (v *wave) receive(h int32, run envelope, thin float64) {
 		}
 	}
 	v.merged = merged
-	v.pool.store(i, merged)
+	v.pool.set(i, merged)
 }
 
 // cross carries the windows on h that have not been yet across its triangle.
@@ -390,7 +426,7 @@ func (v *wave) cross(h int32) {
 	right := v.gate(l.gateB, l.c, l.b, l.toB, &v.right)
 	watched := v.targets.faces != nil && v.targets.faces[h/3] != nil
 	slack := slackShare * l.length
-	windows := v.pool.windows(v.list[h] - 1)
+	windows := v.pool.lists[v.list[h]-1]
 	for i := range windows {
 		w := &windows[i]
 		if w.flags&crossed != 0 {
@@ -460,7 +496,15 @@ func (v *wave) cross(h int32) {
 // negative at A, positive at B.
 func land(w *window, b, arm, ux, uy, length float64) float64 {
 	p, q := w.ray(b)
-	if arm <= 0 || q == 0 {
+	switch {
+	case arm <= 0:
+		return 0
+	case uy == 0: // in the line AB
+		if ux > 0 {
+			return min(arm/ux, length)
+		}
+		return length
+	case q == 0:
 		return 0
 	}
 	if d := q*ux + p*uy; d > 0 {

@@ -70,15 +70,19 @@ func (w *window) ray(t float64) (p, q float64) {
 	return t - w.x, w.y
 }
 
-// hit is where on AB the ray to C = (x, y) crosses; ok is false if none does.
+// hit is where on AB the ray to C = (x, y) crosses; ok is false if none does. Where
+// triangle and rays both lie in the line AB it is C itself.
 func (w *window) hit(x, y float64) (t float64, ok bool) {
 	if w.flags&parallel != 0 {
+		if y == 0 {
+			return x, true
+		}
 		return x - y*w.x/w.y, w.y > 0
 	}
 	if d := w.y + y; d > 0 {
 		return w.x + (x-w.x)*(w.y/d), true
 	}
-	return 0, false
+	return x, true
 }
 
 // to is the distance through w at (x, y) of the triangle, straight.
@@ -104,7 +108,18 @@ func meet(v, w *window, l, r, fl, fr float64) float64 {
 				return t
 			}
 		} else if t, ok := solveQuadratic(a, b, k, wx, w.y, r-l); ok {
-			return l + t
+			// Cancellation may have spoilt the root: then it is a start for what follows.
+			t += l
+			d := w.at(t)
+			f := v.at(t) - d
+			if math.Abs(f) <= 1e-15*d {
+				return t
+			}
+			if (f > 0) == (fr > 0) {
+				r, fr = t, f
+			} else {
+				l, fl = t, f
+			}
 		}
 	} else if v.flags&w.flags&parallel != 0 {
 		return min(max(l+(r-l)*(fl/(fl-fr)), l), r)
@@ -143,7 +158,9 @@ func meet(v, w *window, l, r, fl, fr float64) float64 {
 // solveQuadratic finds the t in [0, length] with a*t + b = k*sqrt((t-x)^2 + y^2); ok
 // is false unless there is just one.
 func solveQuadratic(a, b, k, x, y, length float64) (t float64, ok bool) {
-	// p t^2 + 2 q t + c = 0
+	// p t^2 + 2 q t + c = 0, p without unit lest products of six lengths overflow.
+	scale := 1 / (math.Abs(a) + math.Abs(k))
+	a, b, k = a*scale, b*scale, k*scale
 	p := (a - k) * (a + k)
 	q := a*b + k*k*x
 	c := b*b - k*k*(x*x+y*y)
