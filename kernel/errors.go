@@ -36,3 +36,14 @@ func (e *LoadError) Error() string {
 	}
 	return fmt.Sprintf("heat %g at vertex %d: %s", e.Amount, e.Vertex, e.Reason)
 }
+
+// An OperatorError is a vertex at which the surface has no usable area or weights: a
+// triangle there is flat to the last digit.
+type OperatorError struct {
+	Vertex       int
+	Area, Weight float64 // entries of M and L there
+}
+
+func (e *OperatorError) Error() string {
+	return fmt.Sprintf("vertex %d: area %g and weight %g; want finite numbers, the area above 0: a triangle there is flat to the last digit (weld or refine the mesh)", e.Vertex, e.Area, e.Weight)
+}

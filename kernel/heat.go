@@ -230,9 +230,13 @@ func (f *flow) judge(i int, t float64, opt HeatOptions) {
 	}
 	edge := f.longestEdge(u, largest)
 	r.MeshErrors[i] = edge / f.reach[i] * edge / 8
-	if r.MeshErrors[i] > 0.05 {
-		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g is short for this mesh: edges of %.3g where the heat is put values off by about %.2g %%; --max-edge %.2g brings that to 1 %%",
-			t, edge, 100*r.MeshErrors[i], ResolvingEdge(opt.Diffusivity, t)))
+	if off := 100 * r.MeshErrors[i]; off > 5 {
+		effect := fmt.Sprintf("put values off by about %.2g %%", off)
+		if off > 100 {
+			effect = "cannot carry it"
+		}
+		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g is short for this mesh: edges of %.3g where the heat is %s; --max-edge %.2g brings that to 1 %%",
+			t, edge, effect, ResolvingEdge(opt.Diffusivity, t)))
 	}
 }
 

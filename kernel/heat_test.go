@@ -614,6 +614,23 @@ func TestHeatRefusesWhatItCannotDo(t *testing.T) {
 	}
 }
 
+// A triangle that is flat to the last digit has infinite weights: no solver is made.
+func TestSolverRefusesOperatorsThatAreNotFinite(t *testing.T) {
+	for name, spoil := range map[string]func(op operators){
+		"no area":         func(op operators) { op.lumped[3] = 0 },
+		"infinite area":   func(op operators) { op.lumped[3] = math.Inf(1) },
+		"infinite weight": func(op operators) { op.stiffness.Diag[3] = math.Inf(1) },
+		"no number":       func(op operators) { op.stiffness.Diag[3] = math.NaN() },
+	} {
+		op := torusGrid(1, 1, 4, 4)
+		spoil(op)
+		var bad *OperatorError
+		if _, err := newSolver(context.Background(), nil, op, Options{}); !errors.As(err, &bad) || bad.Vertex != 3 {
+			t.Errorf("%s: got %v, want an *OperatorError at vertex 3", name, err)
+		}
+	}
+}
+
 func TestHeatStopsWhenCancelled(t *testing.T) {
 	s := solverFor(t, meshtest.Icosphere(3, 0, 0), Options{})
 	ctx, cancel := context.WithCancel(context.Background())

@@ -53,7 +53,7 @@ type Stats struct {
 
 // NewSolver prepares the operators of a surface. Sources inside triangles must have
 // been placed and the surface made Delaunay before; it must not be changed afterwards.
-// The error is ctx.Err(), or that of a surface too large to index.
+// The error is ctx.Err(), an *OperatorError, or that of a surface too large to index.
 func NewSolver(ctx context.Context, s *mesh.Surface, opt Options) (*Solver, error) {
 	var consistent *sparse.Matrix
 	if opt.ConsistentMass {
@@ -84,9 +84,13 @@ func newSolver(ctx context.Context, s *mesh.Surface, op operators, opt Options) 
 		component: op.component, area: make([]float64, op.count), options: opt,
 	}
 	for i, c := range v.component {
-		if c >= 0 {
-			v.area[c] += v.lumped[i]
+		if c < 0 {
+			continue
 		}
+		if a, w := v.lumped[i], v.stiffness.Diag[i]; !(a > 0) || a-a != 0 || w-w != 0 {
+			return nil, &OperatorError{i, a, w}
+		}
+		v.area[c] += v.lumped[i]
 	}
 	var coords []float64
 	if s != nil {
