@@ -2,7 +2,6 @@ package kernel
 
 import (
 	"context"
-	"errors"
 	"math"
 	"slices"
 
@@ -59,7 +58,10 @@ func regroup(group, left []int) [][]int {
 func (f *march) space(ctx context.Context, factor *sparse.Factor, group []int) (left []int, err error) {
 	s, r := f.solver, f.result
 	shift := math.Sqrt(f.times[group[0]]) * math.Sqrt(f.times[group[len(group)-1]]) / bestShift(f.tolerance)
-	shift, err = f.factorize(ctx, factor, shift)
+	shift, err = s.tryShifts(shift, f.k.Diag, nil, func(shift float64) error {
+		r.Factorizations++
+		return factor.Factorize(ctx, f.matrix(shift), f.held)
+	})
 	if err != nil {
 		return nil, err
 	}
@@ -217,30 +219,4 @@ func largestOf(x []float64) float64 {
 		top = max(top, math.Abs(v))
 	}
 	return top
-}
-
-// factorize fills factor with M + γK for a shift γ as near to the one wanted as the
-// matrix allows (see flow.factor).
-func (f *march) factorize(ctx context.Context, factor *sparse.Factor, want float64) (float64, error) {
-	s := f.solver
-	least, stiffest, largest := math.Inf(1), 0.0, 0.0
-	for i, c := range s.component {
-		if c < 0 {
-			continue
-		}
-		least = min(least, s.lumped[i]/f.k.Diag[i])
-		stiffest = max(stiffest, f.k.Diag[i])
-		largest = max(largest, s.area[c])
-	}
-	shift := min(max(want, 1e-18*least), 1e15*largest/stiffest)
-	for retries := 8; ; retries-- {
-		f.result.Factorizations++
-		err := factor.Factorize(ctx, f.matrix(shift), f.held)
-		var lost *sparse.NotPositiveDefiniteError
-		if errors.As(err, &lost) && retries > 0 {
-			shift /= 100
-			continue
-		}
-		return shift, err
-	}
 }

@@ -22,5 +22,36 @@
 //	mesh.Mesh -> mesh.NewSurface -> Place -> Delaunay -> NewSolver -> HeatKernels
 //
 // A Solver orders and analyses the matrices once. Every question then costs some
-// factorisations and solves, which its method's comment counts.
+// factorisations and solves, which its method's comment counts:
+//
+//   - [Solver.HeatKernels]: where is a unit of heat after time t?
+//   - [Solver.Diffuse], [Solver.Steady]: given fields, held, losing or fed surfaces
+//   - [Solver.Modes]: eigenvalues and eigenfunctions
+//   - [Solver.Passage]: when does a Brownian particle come to a target, and to which?
+//
+// # Accuracy
+//
+// In time, the Krylov stepper keeps its tolerance: measured errors stay below it, and
+// below the estimate that comes with each field, for tolerances from 1e-4 to 1e-12,
+// over six and more decades of time, on all shapes of the tests. The estimate is 3 to
+// 30 times the error. Implicit Euler with N steps is good to 1/(N-1) of the peak.
+//
+// In space, linear elements are of second order. The kernel of the unit sphere against
+// its Legendre series, largest error over the peak:
+//
+//	vertices     t = 0.05    0.1       0.5
+//	   642        6.9 %      3.4 %     0.77 %
+//	  2562        1.5 %      0.82 %    0.19 %
+//	 10242        0.38 %     0.20 %    0.048 %
+//
+// which is h²/(8t) at the source (HeatResult.MeshErrors). At a vertex with other than
+// six neighbours the lumped mass adds some h² log(1/h) of its own.
+//
+// Thin triangles cost no accuracy in time: where rounding in L would leak heat, solves
+// are refined by weight differences (cells of 1:1e6 keep a tolerance of 1e-12).
+//
+// # Cost
+//
+// On the sphere of 10242 vertices, one time at tolerance 1e-8 takes 24 solves, three
+// times within a decade 30. Implicit Euler takes 1000 solves to 1e-3.
 package kernel

@@ -153,37 +153,42 @@ func (f *flow) missing() int {
 	return k
 }
 
-// factor is that of M + γL for a shift γ as near to the one wanted as the matrix
-// allows. Far below the mesh's shortest times M + γL is M, far above its longest ones
-// the mass is lost to rounding; in both cases a nearer shift gives the same result.
-func (f *flow) factor(ctx context.Context, want float64) (*sparse.Factor, float64, error) {
+// factor is that of M + γL for a shift γ as near to the one wanted as rounding allows.
+func (f *flow) factor(ctx context.Context, want float64) (factor *sparse.Factor, shift float64, err error) {
 	s := f.solver
-	least, most := math.Inf(1), 0.0
-	stiffest, largest := 0.0, 0.0
-	for i, c := range s.component {
-		if c < 0 || !f.warm[c] {
-			continue
-		}
-		d := s.stiffness.Diag[i]
-		stiffest = max(stiffest, d)
-		least = min(least, s.lumped[i]/d)
-		largest = max(largest, s.area[c])
-	}
-	most = largest / stiffest * 1e15
-	shift := min(max(want, 1e-18*least), most)
-	for retries := 8; ; retries-- {
-		factor, fresh, err := s.shifted(ctx, f.shifts(shift))
-		var lost *sparse.NotPositiveDefiniteError
-		if errors.As(err, &lost) && retries > 0 {
-			shift /= 100
-			continue
-		}
-		if err != nil {
-			return nil, 0, err
-		}
+	shift, err = s.tryShifts(want, s.stiffness.Diag, f.warm, func(shift float64) error {
+		var fresh bool
+		factor, fresh, err = s.shifted(ctx, f.shifts(shift))
 		if fresh {
 			f.result.Factorizations++
 		}
-		return factor, shift, nil
+		return err
+	})
+	return factor, shift, err
+}
+
+// tryShifts calls factorize with the shift wanted or, where M + γK cannot be factored
+// with that, the nearest that can, and returns it. Far below the mesh's shortest times
+// M + γK is M, far above its longest ones the mass is lost to rounding; in both cases a
+// nearer shift gives the same result. diag is K's diagonal, some are the components that
+// count (nil: all).
+func (s *Solver) tryShifts(want float64, diag []float64, some []bool, factorize func(shift float64) error) (float64, error) {
+	least, stiffest, largest := math.Inf(1), 0.0, 0.0
+	for i, c := range s.component {
+		if c < 0 || some != nil && !some[c] {
+			continue
+		}
+		least = min(least, s.lumped[i]/diag[i])
+		stiffest = max(stiffest, diag[i])
+		largest = max(largest, s.area[c])
+	}
+	shift := min(max(want, 1e-18*least), 1e15*largest/stiffest)
+	for retries := 8; ; retries-- {
+		err := factorize(shift)
+		var lost *sparse.NotPositiveDefiniteError
+		if !errors.As(err, &lost) || retries == 0 {
+			return shift, err
+		}
+		shift /= 100
 	}
 }
