@@ -212,37 +212,38 @@ func TestEstimateHolds(t *testing.T) {
 	}
 }
 
-// A load with next to nothing of the slowest mode, which later is all that is left:
-// estimates must not be taken in by what the first steps do not see.
+// A load with next to nothing of the slowest mode, which later is all that is left, and
+// nothing of the ones that follow: estimates must not be taken in by what the first
+// steps do not see. (A source in the middle of a nearly symmetric plate is such a load.)
 func TestEstimateHoldsWithAHiddenMode(t *testing.T) {
 	p := newPlate(9, 8)
 	n := len(p.mass)
-	for _, hidden := range []float64{1, 1e-2, 1e-4, 1e-6, 1e-8} {
-		load := make([]float64, n)
-		rng := rand.New(rand.NewPCG(7, 7))
-		for j := 1; j < n; j++ {
-			c := rng.NormFloat64()
-			if j == 1 {
-				c = hidden
-			}
-			for i := range load {
-				load[i] += c * p.mass[i] * p.modes.At(i, j)
-			}
-		}
-		for _, t0 := range []float64{1e-2, 1e-1, 1} {
-			shift := t0 / 13
-			q := NewProcess(p.pencil(shift, 1), load)
-			for q.Len() < 34 && !q.Exhausted() {
-				if err := q.Extend(context.Background()); err != nil {
-					t.Fatal(err)
+	for _, next := range []int{2, 5, 12, 30} {
+		for _, hidden := range []float64{1, 1e-2, 1e-4, 1e-6, 1e-8} {
+			load := make([]float64, n)
+			rng := rand.New(rand.NewPCG(7, 7))
+			for j := next; j < n; j++ {
+				c := rng.NormFloat64()
+				for i := range load {
+					load[i] += p.mass[i] * (c*p.modes.At(i, j) + hidden*p.modes.At(i, 1)/float64(n))
 				}
-				for _, time := range []float64{t0, 5 * t0} {
-					want := p.apply(func(x float64) float64 { return math.Exp(-time * x) }, load)
-					y, _, estimate := q.Evaluate(Heat(time, shift))
-					got := make([]float64, n)
-					q.AddTo(got, y)
-					if err := distance(got, want); err > estimate+1e-13*(1+largest(want)) { // rounding
-						t.Errorf("hidden %g t=%g Len=%d: error %.3g, estimate %.3g, largest value %.3g", hidden, time, q.Len(), err, estimate, largest(want))
+			}
+			for _, t0 := range []float64{1e-2, 1e-1, 1} {
+				shift := t0 / 13
+				q := NewProcess(p.pencil(shift, 1), load)
+				for q.Len() < 34 && !q.Exhausted() {
+					if err := q.Extend(context.Background()); err != nil {
+						t.Fatal(err)
+					}
+					for _, time := range []float64{t0, 5 * t0} {
+						want := p.apply(func(x float64) float64 { return math.Exp(-time * x) }, load)
+						y, _, estimate := q.Evaluate(Heat(time, shift))
+						got := make([]float64, n)
+						q.AddTo(got, y)
+						// Rounding of the basis, which holds the rough modes at full size.
+						if err := distance(got, want); err > estimate+1e-13*(1+largest(want)) {
+							t.Errorf("next %d hidden %g t=%g Len=%d: error %.3g, estimate %.3g, largest value %.3g", next, hidden, time, q.Len(), err, estimate, largest(want))
+						}
 					}
 				}
 			}
