@@ -10,17 +10,25 @@ import (
 // FlowOptions say how a Problem is advanced in time. The zero value is Krylov at the
 // default tolerance.
 type FlowOptions struct {
-	Stepper   Stepper // "" means Krylov
-	Tolerance float64 // Krylov: error in time over the largest value; 0 means 1e-8
-	Steps     int     // ImplicitEuler: steps up to each output time from the one before; 0 means 100
+	Stepper Stepper // "" means Krylov
+	// Tolerance is the error in time over the largest value. Krylov: 0 means 1e-8.
+	// ImplicitEuler: with Steps 0, steps are doubled until two runs differ by less.
+	Tolerance float64
+	// Steps are ImplicitEuler's up to each output time from the one before; 0 without a
+	// Tolerance means 100.
+	Steps int
 }
+
+// mostSteps ends the doubling of steps: backward Euler is good to some 1e-5 by then, and
+// Krylov does better for less.
+const mostSteps = 1 << 15
 
 // A FlowResult holds fields at the times asked for, in the order asked for, and what
 // became of the heat. Slices have one entry for each time.
 type FlowResult struct {
 	Fields         [][]float64 // by surface vertex; NaN at vertices in no triangle
 	Balances       []Balance
-	ErrorEstimates []float64 // Krylov: error in time over the largest value; NaN for ImplicitEuler
+	ErrorEstimates []float64 // error in time over the largest value; NaN for ImplicitEuler of given Steps
 	Solves         int
 	Factorizations int
 	Warnings       []string
@@ -80,9 +88,12 @@ func (s *Solver) Diffuse(ctx context.Context, pr *Problem, times []float64, opt 
 	})
 	r := &FlowResult{Fields: make([][]float64, len(times)), Balances: make([]Balance, len(times)), ErrorEstimates: make([]float64, len(times))}
 	f := &march{system: y, times: times, order: order, result: r, tolerance: all.Tolerance}
-	if all.Stepper == Krylov {
+	switch {
+	case all.Stepper == Krylov:
 		err = f.krylov(ctx)
-	} else {
+	case opt.Steps == 0 && opt.Tolerance > 0:
+		err = f.doubling(ctx)
+	default:
 		err = f.euler(ctx, all.Steps)
 	}
 	if err != nil {
@@ -90,7 +101,7 @@ func (s *Solver) Diffuse(ctx context.Context, pr *Problem, times []float64, opt 
 	}
 	for i, e := range r.ErrorEstimates {
 		if e > all.Tolerance {
-			r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: the error in time is estimated at %.2g of the largest value, above the tolerance %g: rounding allows no better", times[i], e, all.Tolerance))
+			r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: the error in time is estimated at %.2g of the largest value, above the tolerance %g", times[i], e, all.Tolerance))
 		}
 	}
 	return r, nil
@@ -160,6 +171,40 @@ func (f *march) settle(i int, w, integral []float64) {
 		}
 	}
 	f.result.Fields[i], f.result.Balances[i] = u, b
+}
+
+// doubling runs euler with twice the steps of the run before, until the fields of two
+// runs differ by less than the tolerance: the error of a first-order method halves, so
+// what is left of it in the finer run is about that difference.
+func (f *march) doubling(ctx context.Context) error {
+	r := f.result
+	var before [][]float64
+	for steps := 16; ; steps *= 2 {
+		if err := f.euler(ctx, steps); err != nil {
+			return err
+		}
+		worst := math.Inf(1)
+		if before != nil {
+			worst = 0
+			for i, u := range r.Fields {
+				off, size := 0.0, 0.0
+				for v, x := range u {
+					if f.solver.component[v] >= 0 {
+						off, size = max(off, math.Abs(x-before[i][v])), max(size, math.Abs(x))
+					}
+				}
+				if size > 0 {
+					off /= size
+				}
+				r.ErrorEstimates[i] = off
+				worst = max(worst, off)
+			}
+		}
+		if worst <= f.tolerance || 2*steps > mostSteps {
+			return nil
+		}
+		before = slices.Clone(r.Fields)
+	}
 }
 
 // euler takes equal backward Euler steps from each output time to the next.

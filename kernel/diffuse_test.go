@@ -477,6 +477,43 @@ func TestDiffuseKeepsTheMaximumPrinciple(t *testing.T) {
 	}
 }
 
+// Step doubling ends with an error that its estimate tells to a fifth (the next term is
+// a step smaller), and says so where it gave up.
+func TestStepDoubling(t *testing.T) {
+	m := meshtest.Plate(1, 1, 10, 10, 0, 0)
+	s := solverFor(t, m, Options{})
+	n := len(s.lumped)
+	edge := vertices(m, func(x, _, _ float64) bool { return x == 0 })
+	pr := &Problem{Hold: held(n, 1, edge), Initial: uniform(n, 0.2)}
+	times := []float64{0.05, 0.3}
+	exact, err := s.Diffuse(context.Background(), pr, times, FlowOptions{Tolerance: 1e-10})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, tolerance := range []float64{1e-2, 1e-3, 1e-4} {
+		r, err := s.Diffuse(context.Background(), pr, times, FlowOptions{Stepper: ImplicitEuler, Tolerance: tolerance})
+		if err != nil {
+			t.Fatal(err)
+		}
+		for k := range times {
+			got := maxDiff(r.Fields[k], exact.Fields[k]) / maxAbs(exact.Fields[k])
+			if got > 1.2*r.ErrorEstimates[k] || got < 0.8*r.ErrorEstimates[k] || r.ErrorEstimates[k] > tolerance {
+				t.Errorf("tolerance %g t=%g: error %.3g, estimate %.3g", tolerance, times[k], got, r.ErrorEstimates[k])
+			}
+		}
+		if len(r.Warnings) > 0 {
+			t.Errorf("tolerance %g: warnings %q", tolerance, r.Warnings)
+		}
+	}
+	r, err := s.Diffuse(context.Background(), pr, times[:1], FlowOptions{Stepper: ImplicitEuler, Tolerance: 1e-9})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if len(r.Warnings) != 1 || r.ErrorEstimates[0] < 1e-9 {
+		t.Errorf("tolerance 1e-9: estimate %g, warnings %q", r.ErrorEstimates[0], r.Warnings)
+	}
+}
+
 func TestDiffuseRefusesBadFields(t *testing.T) {
 	m := meshtest.Tetrahedron(0)
 	m.Positions = append(m.Positions, 7, 7, 7)

@@ -54,9 +54,11 @@ func (s *Solver) shifted(ctx context.Context, tau []float64) (f *sparse.Factor, 
 		f = s.analysis.NewFactor()
 	}
 	matrix, held := s.assemble(tau)
+	s.options.Progress("factor", 0)
 	if err := f.Factorize(ctx, matrix, held); err != nil {
 		return nil, false, err
 	}
+	s.options.Progress("factor", 1)
 	s.shelf.mu.Lock()
 	s.shelf.items = append(s.shelf.items, &shelved{factor: f, tau: slices.Clone(tau), users: 1})
 	s.shelf.mu.Unlock()
