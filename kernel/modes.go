@@ -113,30 +113,15 @@ func (s *Solver) lanczos(ctx context.Context, r *ModesResult, count int, hold, f
 	if err := factor.Factorize(ctx, matrix, hold); err != nil {
 		return err
 	}
-	pencil := &krylov.Pencil{
-		Dim: len(s.lumped), Shift: shift, Workers: s.options.Workers,
-		Mass: func(dst, x []float64) {
-			s.massTo(dst, x)
-			for v, h := range hold {
-				if h {
-					dst[v] = 0
-				}
-			}
-		},
-		Solve:     factor.SolveTo,
-		SolveMany: factor.SolveManyTo,
-		Deflate: func(x []float64) {
-			s.centre(x, floating)
-			for v, h := range hold {
-				if h {
-					x[v] = 0
-				}
-			}
-		},
-	}
+	solve, solveMany := factor.SolveTo, factor.SolveManyTo
 	if s.leak(nil)*slices.Max(s.area) > 1e-8 {
-		better := &refined{solver: s, factor: factor, mass: true, tau: shift, held: hold}
-		pencil.Solve, pencil.SolveMany = better.SolveTo, nil
+		solve, solveMany = (&refined{solver: s, factor: factor, mass: true, tau: shift, held: hold}).SolveTo, nil
+	}
+	pencil := &krylov.Pencil{Dim: len(s.lumped), Shift: shift, Workers: s.options.Workers}
+	if s.consistent == nil {
+		s.balanced(pencil, solve, solveMany, hold, floating)
+	} else {
+		s.plain(pencil, solve, solveMany, hold, floating)
 	}
 	// This residual leaves eigenvalues good to its square, vectors to it over the gap to
 	// the next eigenvalue, both in terms of B's.
@@ -144,10 +129,84 @@ func (s *Solver) lanczos(ctx context.Context, r *ModesResult, count int, hold, f
 	if err != nil {
 		return err
 	}
+	if s.consistent == nil {
+		for _, x := range e.Vectors {
+			for v, m := range s.lumped {
+				if m > 0 {
+					x[v] /= math.Sqrt(m)
+				}
+			}
+		}
+	}
 	r.Values = append(r.Values, e.Values...)
 	r.Fields = append(r.Fields, e.Vectors...)
 	r.Solves += e.Solves
 	return nil
+}
+
+// plain makes the pencil of L and M as they are, with zeros where held.
+func (s *Solver) plain(p *krylov.Pencil, solve func(dst, b []float64), solveMany func(dst, b []float64, k int), hold, floating []bool) {
+	free := func(x []float64) {
+		for v, h := range hold {
+			if h {
+				x[v] = 0
+			}
+		}
+	}
+	p.Mass = func(dst, x []float64) {
+		s.massTo(dst, x)
+		free(dst)
+	}
+	p.Deflate = func(x []float64) {
+		s.centre(x, floating)
+		free(x)
+	}
+	p.Solve, p.SolveMany = solve, solveMany
+}
+
+// balanced makes the pencil in the variable √M x, whose mass matrix is the identity:
+// that saves most of the work on vectors.
+func (s *Solver) balanced(p *krylov.Pencil, solve func(dst, b []float64), solveMany func(dst, b []float64, k int), hold, floating []bool) {
+	root := make([]float64, len(s.lumped))
+	for v, m := range s.lumped {
+		root[v] = math.Sqrt(m)
+	}
+	weigh := func(x []float64) {
+		for from := 0; from < len(x); from += len(root) {
+			column := x[from : from+len(root)]
+			for v, w := range root {
+				column[v] *= w
+			}
+		}
+	}
+	p.Solve = func(dst, b []float64) {
+		weigh(b)
+		solve(dst, b)
+		weigh(dst)
+	}
+	if solveMany != nil {
+		p.SolveMany = func(dst, b []float64, k int) {
+			weigh(b)
+			solveMany(dst, b, k)
+			weigh(dst)
+		}
+	}
+	p.Deflate = func(x []float64) {
+		mean := make([]float64, len(s.area))
+		for v, c := range s.component {
+			if c >= 0 {
+				mean[c] += root[v] * x[v]
+			}
+		}
+		for v, c := range s.component {
+			switch {
+			case hold[v]:
+				x[v] = 0
+			case floating[c]:
+				x[v] -= root[v] * mean[c] / s.area[c]
+			}
+		}
+	}
 }
 
 // residuals measures every pair on the matrices themselves.

@@ -18,12 +18,15 @@ type basis struct {
 }
 
 // each runs do for every block of n rows, on several goroutines.
-func each(workers, n int, do func(block, lo, hi int)) {
-	blocks := (n + blockRows - 1) / blockRows
-	if workers > blocks/8 { // small vectors are done before a goroutine has started
-		workers = blocks / 8
+func each(workers, n int, do func(block, lo, hi int)) { eachPiece(workers, n, blockRows, do) }
+
+// eachPiece runs do for every size of n rows.
+func eachPiece(workers, n, size int, do func(piece, lo, hi int)) {
+	blocks := (n + size - 1) / size
+	if workers > n/4096 { // small vectors are done before a goroutine has started
+		workers = n / 4096
 	}
-	run := func(b int) { do(b, b*blockRows, min(n, (b+1)*blockRows)) }
+	run := func(b int) { do(b, b*size, min(n, (b+1)*size)) }
 	if workers <= 1 {
 		for b := range blocks {
 			run(b)
@@ -74,100 +77,6 @@ func (b *basis) add(x, c []float64) {
 			axpy(x[lo:hi], a, b.vectors[j][lo:hi])
 		}
 	})
-}
-
-// dotsMany sets c[j*k+l] = vectors[j]ᵀ x_l for the k columns x_l of x.
-func (b *basis) dotsMany(c, x []float64, k int) {
-	n := len(x) / k
-	rows := len(b.vectors)
-	blocks := (n + blockRows - 1) / blockRows
-	if len(b.partial) < blocks*rows*k {
-		b.partial = make([]float64, blocks*max(rows, 16)*k*2)
-	}
-	each(b.workers, n, func(block, lo, hi int) {
-		out := b.partial[block*rows*k:]
-		for j, v := range b.vectors {
-			v = v[lo:hi]
-			l := 0
-			for ; l+4 <= k; l += 4 {
-				dot4(out[j*k+l:j*k+l+4], v, x[l*n+lo:l*n+hi], x[(l+1)*n+lo:(l+1)*n+hi], x[(l+2)*n+lo:(l+2)*n+hi], x[(l+3)*n+lo:(l+3)*n+hi])
-			}
-			for ; l < k; l++ {
-				out[j*k+l] = dot(v, x[l*n+lo:l*n+hi])
-			}
-		}
-	})
-	clear(c[:rows*k])
-	for block := range blocks {
-		for i, s := range b.partial[block*rows*k : (block+1)*rows*k] {
-			c[i] += s
-		}
-	}
-}
-
-// subtractMany sets x_l -= Σ_j c[j*k+l] vectors[j] for the k columns x_l of x.
-func (b *basis) subtractMany(x, c []float64, k int) {
-	n := len(x) / k
-	each(b.workers, n, func(_, lo, hi int) {
-		j := 0
-		for ; j+4 <= len(b.vectors); j += 4 {
-			v0, v1, v2, v3 := b.vectors[j][lo:hi], b.vectors[j+1][lo:hi], b.vectors[j+2][lo:hi], b.vectors[j+3][lo:hi]
-			for l := range k {
-				axpy4(x[l*n+lo:l*n+hi], -c[j*k+l], -c[(j+1)*k+l], -c[(j+2)*k+l], -c[(j+3)*k+l], v0, v1, v2, v3)
-			}
-		}
-		for ; j < len(b.vectors); j++ {
-			for l := range k {
-				axpy(x[l*n+lo:l*n+hi], -c[j*k+l], b.vectors[j][lo:hi])
-			}
-		}
-	})
-}
-
-// turn replaces the vectors by the first keep combinations of them, vector l being
-// Σ_j s[j*stride+l] vectors[j]; vectors beyond the first rows stay as they are and move
-// up behind them.
-func (b *basis) turn(rows, keep int, s []float64, stride int) {
-	n := len(b.vectors[0])
-	each(b.workers, n, func(_, lo, hi int) {
-		out := make([]float64, keep*(hi-lo))
-		for l := range keep {
-			y := out[l*(hi-lo) : (l+1)*(hi-lo)]
-			j := 0
-			for ; j+4 <= rows; j += 4 {
-				axpy4(y, s[j*stride+l], s[(j+1)*stride+l], s[(j+2)*stride+l], s[(j+3)*stride+l],
-					b.vectors[j][lo:hi], b.vectors[j+1][lo:hi], b.vectors[j+2][lo:hi], b.vectors[j+3][lo:hi])
-			}
-			for ; j < rows; j++ {
-				axpy(y, s[j*stride+l], b.vectors[j][lo:hi])
-			}
-		}
-		for l := range keep {
-			copy(b.vectors[l][lo:hi], out[l*(hi-lo):(l+1)*(hi-lo)])
-		}
-	})
-	b.vectors = append(b.vectors[:keep], b.vectors[rows:]...)
-}
-
-// dot4 sets out[l] = vᵀ x_l: v is read once for four columns.
-func dot4(out, v, x0, x1, x2, x3 []float64) {
-	var s0, s1, s2, s3 float64
-	x0, x1, x2, x3 = x0[:len(v)], x1[:len(v)], x2[:len(v)], x3[:len(v)]
-	for i, a := range v {
-		s0 += a * x0[i]
-		s1 += a * x1[i]
-		s2 += a * x2[i]
-		s3 += a * x3[i]
-	}
-	out[0], out[1], out[2], out[3] = s0, s1, s2, s3
-}
-
-// axpy4 is y += a0 v0 + a1 v1 + a2 v2 + a3 v3.
-func axpy4(y []float64, a0, a1, a2, a3 float64, v0, v1, v2, v3 []float64) {
-	v0, v1, v2, v3 = v0[:len(y)], v1[:len(y)], v2[:len(y)], v3[:len(y)]
-	for i := range y {
-		y[i] += (a0*v0[i] + a1*v1[i]) + (a2*v2[i] + a3*v3[i])
-	}
 }
 
 // inner is xᵀ y, with the sum in the order of blocks.

@@ -6,7 +6,8 @@ type Pencil struct {
 	Shift float64                // γ > 0
 	Mass  func(dst, x []float64) // dst = M x; dst and x do not overlap
 	Solve func(dst, b []float64) // dst = (M + γK)⁻¹ b; dst and b do not overlap
-	// SolveMany is Solve for k columns at a time; nil: Solve does them one by one.
+	// SolveMany is Solve for k columns at a time; nil: Solve does them one by one. Both may
+	// overwrite b for Smallest.
 	SolveMany func(dst, b []float64, k int)
 	// Deflate projects x, in the M inner product, onto the complement of known null
 	// vectors of K; nil where there are none. What the process returns then lacks
