@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"sync"
 
 	"heatskin/internal/krylov"
 )
@@ -171,13 +172,16 @@ func (s *Solver) balanced(p *krylov.Pencil, solve func(dst, b []float64), solveM
 	for v, m := range s.lumped {
 		root[v] = math.Sqrt(m)
 	}
-	weigh := func(x []float64) {
-		for from := 0; from < len(x); from += len(root) {
-			column := x[from : from+len(root)]
-			for v, w := range root {
-				column[v] *= w
-			}
+	weigh := func(x []float64) { // a column a goroutine
+		var wait sync.WaitGroup
+		for column := range slices.Chunk(x, len(root)) {
+			wait.Go(func() {
+				for v, w := range root {
+					column[v] *= w
+				}
+			})
 		}
+		wait.Wait()
 	}
 	p.Solve = func(dst, b []float64) {
 		weigh(b)

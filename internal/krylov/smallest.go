@@ -107,6 +107,15 @@ type eigenprocess struct {
 	before   []float64 // what had converged when the last check began; nil before the first
 	solves   int
 	restarts int
+	x, b     []float64 // scratch: eight columns each
+}
+
+// scratch returns two arrays of eight columns, for use until the next call.
+func (e *eigenprocess) scratch() (x, b []float64) {
+	if e.x == nil {
+		e.x, e.b = make([]float64, abreast*e.n), make([]float64, abreast*e.n)
+	}
+	return e.x, e.b
 }
 
 // eachColumn runs do for the eight columns, on several goroutines where it pays.
@@ -132,7 +141,7 @@ func (e *eigenprocess) eachColumn(do func(l int)) {
 // apply sets each column x of a block to B x, deflated.
 func (e *eigenprocess) apply(block []float64) {
 	p, n := e.pencil, e.n
-	x, b := make([]float64, abreast*n), make([]float64, abreast*n)
+	x, b := e.scratch()
 	e.basis.columns(x, block, n)
 	// B blows null vectors up a thousandfold and more against the rest: their part is
 	// taken off before, and twice after.
