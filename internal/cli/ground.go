@@ -71,8 +71,8 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 	return g, err
 }
 
-// refine cuts faces that are too large. What was not asked for is left alone where it
-// would be too much.
+// refine cuts faces that are too large. What was not asked for is done as far as the
+// budget goes: slivers may need more vertices than their area tells.
 func (g *ground) refine(ctx context.Context, j *job, input *meshFlags, refine *refineFlags, content resolution) error {
 	edge, budget := refine.maxEdge, refineBudget
 	if edge == 0 {
@@ -81,17 +81,20 @@ func (g *ground) refine(ctx context.Context, j *job, input *meshFlags, refine *r
 		}
 		edge, budget = content(g.surface), autoBudget
 	}
-	if !(slices.Max(g.surface.Length) > edge) {
+	longest := slices.Max(g.surface.Length)
+	if longest <= edge {
 		return nil
 	}
 	j.clock.enter("refine")
 	part, err := mesh.Refine(ctx, g.original, edge, budget)
 	var tooMuch *mesh.BudgetError
-	switch {
-	case errors.As(err, &tooMuch) && refine.maxEdge == 0:
-		j.warn("faces are too large for their number, and cutting them is too much to do unasked: set --max-edge")
-		return nil
-	case err != nil:
+	for refine.maxEdge == 0 && errors.As(err, &tooMuch) {
+		if edge *= 2; edge >= longest {
+			return nil
+		}
+		part, err = mesh.Refine(ctx, g.original, edge, budget)
+	}
+	if err != nil {
 		return refuse(err)
 	}
 	g.part = part
