@@ -28,6 +28,7 @@ type front struct {
 	back  []float64 // angle of the ray back, in the vertex's frame; NaN where there is none
 	noise []float64 // how far directions may be off, from the curvature the ray has met
 	weak  []bool    // reached on the word of one end of an edge only, or round a bend
+	sides []sides   // where the front started last, left and right of the ray
 	done  []bool    // may give its value on
 	fixed []bool    // a source: not to be changed
 	line  []bool    // by halfedge: the edge is a source as a whole; nil if there are none
@@ -51,7 +52,7 @@ func newFront(s *mesh.Surface, f *frames) *front {
 	return &front{
 		s: s, frame: f,
 		d: make([]float64, n), left: make([]float64, n), right: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
-		weak: make([]bool, n), done: make([]bool, n), fixed: make([]bool, n),
+		weak: make([]bool, n), sides: make([]sides, n), done: make([]bool, n), fixed: make([]bool, n),
 	}
 }
 
@@ -63,6 +64,7 @@ func (w *front) start(vertices []int32, line []bool) {
 	w.line = line
 	source := func(v int32) {
 		w.d[v], w.left[v], w.right[v], w.back[v], w.noise[v] = 0, math.Inf(1), math.Inf(1), math.NaN(), 0
+		w.sides[v] = sides{noOrigin, noOrigin}
 		w.done[v], w.fixed[v] = true, true
 	}
 	for _, v := range vertices {
@@ -79,8 +81,20 @@ func (w *front) start(vertices []int32, line []bool) {
 // An arrival is the front's state at a vertex.
 type arrival struct {
 	d, left, right, back, noise float64
+	sides                       sides
 	weak                        bool
 }
+
+// An origin is the corner that a front last turned round, and the direction, in the
+// corner's frame, in which the ray left it. corner is -1 if there is none.
+type origin struct {
+	corner int32
+	exit   float64
+}
+
+type sides struct{ left, right origin }
+
+var noOrigin = origin{corner: -1}
 
 // offer takes an arrival if it is earlier, but nothing weak over something that is not:
 // what comes too late is mended once more is known, what comes too early spreads.
@@ -106,7 +120,7 @@ func (w *front) sweep(order []int32) {
 
 func (w *front) set(v int32, a arrival) {
 	w.d[v], w.left[v], w.right[v], w.back[v] = a.d, a.left, a.right, a.back
-	w.noise[v], w.weak[v] = a.noise, a.weak
+	w.noise[v], w.weak[v], w.sides[v] = a.noise, a.weak, a.sides
 }
 
 // mend takes up whatever a vertex later in the order could have told an earlier one:
@@ -114,12 +128,12 @@ func (w *front) set(v int32, a arrival) {
 func (w *front) mend(order []int32) (changed int) {
 	var queue vertexHeap
 	queued := make([]bool, len(w.d))
-	try := func(v int32) bool {
+	try := func(v int32, anew bool) bool {
 		if w.fixed[v] {
 			return false
 		}
 		a := w.arrive(v)
-		if !(a.d < w.d[v]-w.slack(v)) && !(w.weak[v] && !a.weak && a.d != w.d[v]) {
+		if !(a.d < w.d[v]-w.slack(v)) && !(anew && w.weak[v] && a.d != w.d[v]) {
 			return false
 		}
 		w.set(v, a)
@@ -138,14 +152,14 @@ func (w *front) mend(order []int32) (changed int) {
 		}
 	}
 	for _, v := range order {
-		if try(v) {
+		if try(v, true) {
 			wake(v)
 		}
 	}
 	for looks := 0; len(queue) > 0 && looks < 60*len(w.d); looks++ {
 		v := queue.pop()
 		queued[v] = false
-		if try(v) {
+		if try(v, false) {
 			wake(v)
 		}
 	}
@@ -189,7 +203,11 @@ func (w *front) arrive(v int32) arrival {
 // never too short, and is kept only until something better comes.
 func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64) {
 	length := w.s.Length[edge]
-	a := arrival{d: w.d[q] + length, left: 1 / length, right: 1 / length, back: fromV}
+	anew := origin{q, fromQ}
+	if w.source(q) {
+		anew = noOrigin
+	}
+	a := arrival{d: w.d[q] + length, left: 1 / length, right: 1 / length, back: fromV, sides: sides{anew, anew}}
 	if a.d >= best.d {
 		return
 	}
@@ -198,10 +216,10 @@ func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64)
 		tol := flatNoise + curvedNoise*w.noise[q]
 		straightLeft, straightRight := math.Abs(toLeft-math.Pi) <= tol, math.Abs(toRight-math.Pi) <= tol
 		if straightRight || straightLeft && toRight < math.Pi {
-			a.right = w.right[q] / max(1+w.right[q]*length, 1e-9)
+			a.right, a.sides.right = w.right[q]/max(1+w.right[q]*length, 1e-9), w.sides[q].right
 		}
 		if straightLeft || straightRight && toLeft < math.Pi {
-			a.left = w.left[q] / max(1+w.left[q]*length, 1e-9)
+			a.left, a.sides.left = w.left[q]/max(1+w.left[q]*length, 1e-9), w.sides[q].left
 		}
 		a.weak = !straightLeft && !straightRight && min(toLeft, toRight) < math.Pi
 	}
@@ -249,7 +267,7 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	if w.line != nil && w.line[h1] {
 		if tri.x >= 0 && tri.x <= length {
 			kappa := w.bend(0, tri.y, v)
-			best.offer(arrival{tri.y, kappa, kappa, w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], false})
+			best.offer(arrival{tri.y, kappa, kappa, w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], sides{noOrigin, noOrigin}, false})
 		}
 		return
 	}
@@ -258,11 +276,11 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	da, db, noise := math.Inf(1), math.Inf(1), w.frame.turning[v]
 	if w.done[a] {
 		da, noise = w.d[a], max(noise, w.noise[a])
-		ra, knowsA = w.rayAt(a, w.right[a], w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
+		ra, knowsA = w.rayAt(a, w.right[a], w.sides[a].right, w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
 	}
 	if w.done[b] {
 		db, noise = w.d[b], max(noise, w.noise[b])
-		rb, knowsB = w.rayAt(b, w.left[b], w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
+		rb, knowsB = w.rayAt(b, w.left[b], w.sides[b].left, w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
 	}
 	if min(da, db) >= best.d && !best.weak {
 		return // the front passes this edge when it is past v
@@ -296,13 +314,95 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	case okB:
 		w.offer(best, pass, rb, rb)
 	default:
-		if knowsA && !(tooA < 0 && ra.shaded(rb, knowsB, tri, 1, tol)) {
+		// An end that has more than the other end's front foretells lies in its shadow.
+		if knowsA && !(tooA < -tol && w.roundCorner(best, pass, ra, rb, knowsB, -1, tol)) {
 			w.offer(best, pass, ra, ra)
 		}
-		if knowsB && !(tooB < 0 && rb.shaded(ra, knowsA, tri, -1, tol)) {
+		if knowsB && !(tooB < -tol && w.roundCorner(best, pass, rb, ra, knowsA, 1, tol)) {
 			w.offer(best, pass, rb, rb)
 		}
 	}
+}
+
+// roundCorner offers v what comes to it where r, the front at one end of the edge, has
+// the other end in its shadow: the front there has turned round corners, and which of
+// them v is lit by tells their string. side is 1 if the corners lie on the left of r
+// (the dark end is a), -1 if on the right. It returns false if v is lit by r itself.
+//
+// The corners are laid into the plane one by one, backwards from the dark end: the ray
+// back at a corner, the length to the one before, and the angle that the string makes
+// there on the lit side are known. v is lit by the first that sees it past the next.
+func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, side, tol float64) bool {
+	if !known || !(dark.kappa > 0) {
+		return true // nothing is known of what stands between
+	}
+	past := func(x, y float64) bool { // v is on the lit side of the ray of r past (x, y)
+		dx, dy := r.kappa*(x-r.x)-r.ex, r.kappa*y-r.ey
+		return side*(dx*(p.tri.y-y)-dy*(p.tri.x-x)) <= 0
+	}
+	var lit corner // the one that v is lit by
+	known = false  // whether that has been found
+	at := corner{dark.from, dark.x + dark.ex/dark.kappa, dark.ey / dark.kappa, dark.x, 0}
+	first, reached := at, dark.d
+	const mostCorners = 200
+	for range mostCorners {
+		c := at.from.corner
+		if c < 0 || math.Abs(w.d[c]+math.Hypot(at.ax-at.x, at.ay-at.y)-reached) > 4*tol {
+			break // not a string of corners, or one of them has been reached another way since
+		}
+		reached = w.d[c]
+		if math.Abs(r.at(at.x, at.y)-w.d[c]) <= 4*tol { // on the front of r itself
+			if past(at.x, at.y) {
+				return false
+			}
+			if !known {
+				lit = at
+			}
+			w.offerCorner(best, p, lit)
+			return true
+		}
+		before, kappa, gap := w.sides[c].left, w.left[c], 0.0
+		if side > 0 {
+			gap = w.frame.turn(c, w.back[c], at.from.exit)
+		} else {
+			before, kappa = w.sides[c].right, w.right[c]
+			gap = w.frame.turn(c, at.from.exit, w.back[c])
+		}
+		if !(gap < 3*math.Pi) || !(kappa > 0) || math.IsInf(kappa, 1) {
+			break
+		}
+		// The ray back at the corner: the string's direction, turned by gap on the lit side.
+		sin, cos := math.Sincos(-side * gap)
+		length := math.Hypot(at.ax-at.x, at.ay-at.y)
+		ux, uy := (at.ax-at.x)/length, (at.ay-at.y)/length
+		bx, by := ux*cos-uy*sin, ux*sin+uy*cos
+		if !known && side*(-bx*(p.tri.y-at.y)+by*(p.tri.x-at.x)) > 0 {
+			lit, known = at, true
+		}
+		at = corner{before, at.x + bx/kappa, at.y + by/kappa, at.x, at.y}
+	}
+	return !past(first.x, first.y) // what stands next to the dark end will do
+}
+
+// A corner that a front has turned round, laid into the plane of a face at (x, y); its
+// front left it towards (ax, ay), which is where from.exit points in its own frame.
+type corner struct {
+	from         origin
+	x, y, ax, ay float64
+}
+
+// offerCorner takes what a front that starts anew at the corner foretells at v.
+func (w *front) offerCorner(best *arrival, p passage, c corner) {
+	dx, dy := p.tri.x-c.x, p.tri.y-c.y
+	radius := math.Hypot(dx, dy)
+	value := w.d[c.from.corner] + radius
+	x := c.x - dx*c.y/dy
+	if value >= best.d && !best.weak || c.y >= 0 || x < -rim*p.tri.length || x > (1+rim)*p.tri.length {
+		return
+	}
+	c.from.exit += math.Atan2((c.ax-c.x)*dy-(c.ay-c.y)*dx, (c.ax-c.x)*dx+(c.ay-c.y)*dy)
+	kappa := w.bend(1/radius, math.Hypot(x-p.tri.x, p.tri.y), p.v)
+	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, sides{c.from, c.from}, p.weak})
 }
 
 // gap is the angle at q, counter-clockwise, between the ray back and an edge that the
@@ -343,12 +443,18 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		value = share*value + (1-share)*other
 		kappa = share*kappa + (1-share)*otherKappa
 	}
-	if value >= best.d && !best.weak {
-		return
+	if value >= best.d && !best.weak || min(r.d, s.d) >= value {
+		return // what is farther than v may have its front from v
 	}
-	run := math.Hypot(x-p.tri.x, p.tri.y)
-	kappa = w.bend(kappa, run, p.v)
-	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, p.weak})
+	from := r.from
+	if s.from.corner >= 0 && x > p.tri.length/2 {
+		r, from = s, s.from
+	}
+	if from.corner >= 0 {
+		from.exit += r.angleFrom(p.tri)
+	}
+	kappa = w.bend(kappa, math.Hypot(x-p.tri.x, p.tri.y), p.v)
+	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, sides{from, from}, p.weak})
 }
 
 // triangle is a face laid into the plane: a = (0, 0), b = (length, 0), v = (x, y).
@@ -361,13 +467,16 @@ func (t triangle) angleAtV(x float64) float64 {
 
 // A ray is the front near one end of an edge ab, in the frame of the face beyond: it
 // passed (x, 0) at d with curvature kappa, coming from direction (ex, ey), ey < 0.
-type ray struct{ d, kappa, x, ex, ey float64 }
+type ray struct {
+	d, kappa, x, ex, ey float64
+	from                origin
+}
 
 // rayAt lays the front at q, which is at (x, 0), into the frame of a face that it
 // enters through an edge. gap is the angle at q between the ray back and that edge, on
 // the far side. It is not known where the ray does not come through the edge, and at
 // sources.
-func (w *front) rayAt(q int32, kappa, gap, x float64) (r ray, known bool) {
+func (w *front) rayAt(q int32, kappa float64, from origin, gap, x float64) (r ray, known bool) {
 	if !(gap < math.Pi) || math.IsInf(kappa, 1) { // NaN: no direction
 		return ray{}, false
 	}
@@ -375,7 +484,7 @@ func (w *front) rayAt(q int32, kappa, gap, x float64) (r ray, known bool) {
 	if x > 0 {
 		cos = -cos
 	}
-	return ray{d: w.d[q], kappa: kappa, x: x, ex: cos, ey: -sin}, true
+	return ray{d: w.d[q], kappa: kappa, x: x, ex: cos, ey: -sin, from: from}, true
 }
 
 // at is the distance that the ray foretells at (x, y).
@@ -415,20 +524,10 @@ func (r ray) reach(t triangle) (value, kappa float64) {
 	return value, r.kappa / max(rho, 1e-9)
 }
 
-// shaded tells whether v lies in a shadow that ends between the ends of the edge: r
-// foretells less than the other end has, so something stands between. If that is the
-// centre of the other front (a corner that it turned round), rays of r are cut off
-// there, on the side of the other end: side is 1 if that is b. If it is not, several
-// corners stand between, and nothing of r is believed beyond its own end.
-func (r ray) shaded(other ray, known bool, t triangle, side, tol float64) bool {
-	if !known || !(other.kappa > 0) {
-		return true
-	}
-	radius := 1 / other.kappa
-	cx, cy := other.x+other.ex*radius, other.ey*radius
-	// Direction of the ray to v, and from v to the corner.
+// angleFrom is the angle, at the ray's centre, from the ray to v, counter-clockwise.
+func (r ray) angleFrom(t triangle) float64 {
 	dx, dy := r.kappa*(t.x-r.x)-r.ex, r.kappa*t.y-r.ey
-	return side*(dx*(cy-t.y)-dy*(cx-t.x)) > 1e-12*(math.Abs(dx)+math.Abs(dy))*(math.Abs(cx-t.x)+math.Abs(cy-t.y))
+	return math.Atan2(-r.ex*dy+r.ey*dx, -r.ex*dx-r.ey*dy)
 }
 
 func next(h int32) int32 {
