@@ -308,8 +308,7 @@ func (r *plyReader) readFaces(e *element) error {
 	}
 	f := face{soup: r.soup}
 	for i := range e.count {
-		// No header's promise goes into the capacity here: faces may be of any size.
-		r.soup.Triangles = room(r.soup.Triangles, 3, 0)
+		r.soup.Triangles = room(r.soup.Triangles, 3, 3*e.count) // larger faces take more, by doubling
 		f.begin()
 		var err error
 		if r.header.order == nil {

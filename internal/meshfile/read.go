@@ -259,7 +259,7 @@ func room[T any](s []T, n int, final int64) []T {
 		return s
 	}
 	size := max(2*int64(cap(s)), 1<<12)
-	if final > 0 {
+	if final >= int64(len(s)+n) {
 		size = min(2*size, final)
 	}
 	size = max(size, int64(len(s)+n))
