@@ -187,7 +187,7 @@ func rounded(x, size float64) string {
 		return "inf"
 	case math.IsNaN(x):
 		return "nan"
-	case math.Abs(x) <= 1e-12*size:
+	case math.Abs(x) <= 1e-11*size:
 		return "0"
 	}
 	return strconv.FormatFloat(x, 'g', 6, 64)
