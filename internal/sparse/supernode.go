@@ -17,7 +17,7 @@ type supernode struct {
 func frontCost(w, m int64) float64 {
 	r := m - w
 	flops := float64(w) * (float64(r*r) + float64(r*w) + float64(w*w)/3)
-	return 300 + 1.5*float64(factorSize(w, m)) + 0.8*float64(r*r) + 0.03*flops
+	return 100 + 4*float64(factorSize(w, m)) + 0.8*float64(r*r) + 0.03*flops
 }
 
 // supernodes groups the columns, listed in postorder, into supernodes and returns the new order of
