@@ -154,7 +154,7 @@ func (s *Surface) flip(h, g int32) {
 	h1, g1 := next(h), next(g)
 	xk, yk := s.apex(h)
 	xl, yl := s.apex(g) // from j, against the direction of h
-	diagonal := math.Hypot(xk-(s.Length[h]-xl), yk+yl)
+	diagonal := fit(math.Hypot(xk-(s.Length[h]-xl), yk+yl), s.Length[g1], s.Length[prev(h)], s.Length[h1], s.Length[prev(g)])
 	k, l := s.Vert[prev(h)], s.Vert[prev(g)]
 
 	// Two outer halfedges change places: g1 (i→l) goes to h, and h1 (j→k) to g.
@@ -179,6 +179,15 @@ func (s *Surface) flip(h, g int32) {
 	s.Vert[h1], s.Vert[g1] = l, k
 	s.setCotangents(h / 3)
 	s.setCotangents(g / 3)
+}
+
+// fit moves the length of a new edge by what rounding may have put it off, so that the
+// triangles that it makes with the pairs of edges (a, b) and (c, d) keep a slack.
+func fit(length, a, b, c, d float64) float64 {
+	longest := max(a, b, c, d)
+	least := max(math.Abs(a-b), math.Abs(c-d)) + 2*slackFloor*longest
+	most := min(a+b, c+d) * (1 - 2*slackFloor)
+	return min(max(length, least), max(least, most))
 }
 
 // before is the halfedge whose Glue is h.
@@ -215,8 +224,7 @@ func (s *Surface) splitEdge(h int32, at float64) int32 {
 			from = e - at
 		}
 		x, y := s.apex(g)
-		spoke := math.Hypot(from-x, y)
-		spoke = max(spoke, math.Abs(from-s.Length[prev(g)]), math.Abs(e-from-s.Length[next(g)])) // rounding
+		spoke := fit(math.Hypot(from-x, y), from, s.Length[prev(g)], e-from, s.Length[next(g)])
 		g2 := s.cutFace(g, m, spoke)
 		s.Length[g], s.Length[g2] = from, e-from
 		s.mark[g2] = s.mark[g]
