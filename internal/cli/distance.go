@@ -1,6 +1,7 @@
 package cli
 
 import (
+	"fmt"
 	"math"
 	"strconv"
 
@@ -19,6 +20,10 @@ type distanceSummary struct {
 	LargestDistance    number `json:"largest_distance"`
 	Reached            int    `json:"reached_vertices"`
 }
+
+// mostSmoothing is the longest time of the heat solve, in squares of the mean edge:
+// longer ones reach across a thousand edges, and u no longer tells near from far.
+const mostSmoothing = 1e6
 
 const (
 	methodHeat  = "heat"
@@ -57,7 +62,17 @@ from has the distance inf.`,
 	oneOfVar(flags, &method, "method", methodHeat, []string{methodHeat, methodExact},
 		"`heat|exact`: fast, or shortest paths over the flat triangles without any discretisation error")
 	flags.BoolVar(&opts.Smooth, "smooth", false, "heat: a field without kinks where fronts meet; less accurate")
-	positiveVar(flags, &opts.Smoothing, "smoothing", 1, "heat: scale the time of the heat solve by `F`")
+	opts.Smoothing = 1
+	varFunc(flags, "smoothing", "1", "heat: scale the time of the heat solve by `F`", func(text string) error {
+		x, err := positive(text)
+		if err == nil && x > mostSmoothing {
+			err = fmt.Errorf("want a number above 0, and at most %d", int(mostSmoothing))
+		}
+		if err == nil {
+			opts.Smoothing = x
+		}
+		return err
+	})
 	flags.BoolVar(&each, "each", false, "one column for each source (distance_0, distance_1...) in place of their union")
 	flags.StringVar(&matrix, "matrix", "", "distances between all sources, as `FILE.csv` with the columns from,to,distance")
 	output.register(flags)
@@ -75,7 +90,7 @@ from has the distance inf.`,
 		if matrix != "" {
 			output.tables = append(output.tables, matrix)
 		}
-		if err := output.prepare(args[0]); err != nil {
+		if err := output.prepare(append(source.files, args[0])...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])

@@ -112,7 +112,7 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 		if err := step.check(cmd); err != nil {
 			return err
 		}
-		if err := output.prepare(args[0]); err != nil {
+		if err := output.prepare(append(source.files, args[0])...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])

@@ -76,8 +76,8 @@ func (o *outputFlags) registerSummary(flags *pflag.FlagSet) {
 
 // prepare finds out what would keep the results from being written, before anything
 // long is computed: names of no known kind, two results for one file, a directory
-// that is not there. It also reads the probes.
-func (o *outputFlags) prepare(input string) error {
+// that is not there, one of the inputs. It also reads the probes.
+func (o *outputFlags) prepare(inputs ...string) error {
 	for _, name := range o.out {
 		if ext := strings.ToLower(filepath.Ext(name)); fieldFormats[ext] == nil {
 			return usagef("--out %s: want a name that ends in one of %s", name, extensions())
@@ -92,7 +92,7 @@ func (o *outputFlags) prepare(input string) error {
 		}
 	}
 	seen := map[string]string{}
-	for _, name := range []string{input, o.probe} {
+	for _, name := range append(inputs, o.probe) {
 		if name != "" && name != "-" {
 			seen[absolute(name)] = "an input"
 		}

@@ -20,6 +20,7 @@ import (
 type sourceFlags struct {
 	word  string // "at" or "to"
 	asked []asked
+	files []string // tables of points
 }
 
 // asked is one source flag: how to find its place on a mesh. original is the mesh as
@@ -39,6 +40,9 @@ func (s *sourceFlags) register(flags *pflag.FlagSet, word string) {
 	add := func(name, usage string, parse func(text string) (asked, error)) {
 		varFunc(flags, word+"-"+name, "", usage+" (repeatable)", func(text string) error {
 			place, err := parse(text)
+			if err == nil && name == "file" {
+				s.files = append(s.files, text)
+			}
 			if err == nil {
 				s.asked = append(s.asked, place)
 			}

@@ -116,14 +116,14 @@ func flagError(cmd *cobra.Command, err error) error {
 		return usagef("--%s needs a value: %s", missing.GetFlag().Name, kind)
 	case errors.As(err, &unknown):
 		if unknown.GetSpecifiedShortnames() != "" {
-			return usagef("unknown flag -%s; a flag starts with two dashes, see heatskin %s --help",
-				unknown.GetSpecifiedShortnames(), cmd.Name())
+			return usagef("unknown flag -%s; a flag starts with two dashes, see %s --help",
+				unknown.GetSpecifiedShortnames(), cmd.CommandPath())
 		}
 		name := unknown.GetSpecifiedName()
 		if near := nearestFlag(cmd, name); near != "" {
 			return usagef("unknown flag --%s; did you mean --%s?", name, near)
 		}
-		return usagef("unknown flag --%s; see heatskin %s --help", name, cmd.Name())
+		return usagef("unknown flag --%s; see %s --help", name, cmd.CommandPath())
 	}
 	return usage(err)
 }
