@@ -17,12 +17,14 @@ type DistanceOptions struct {
 
 // A DistanceResult is a field of distances and how it came about.
 type DistanceResult struct {
-	Distance []float64 // by vertex of the surface; +Inf where no source can be reached from
-	Times    []float64 // t of the heat solve by component; NaN without a source
-	Mended   int       // vertices that the heat order had too early
-	Solves   int       // linear solves
-	Shortest float64   // least mean edge length of the components with sources
-	Reached  int       // vertices with a finite distance
+	Distance  []float64 // by vertex of the surface; +Inf where no source can be reached from
+	Times     []float64 // t of the heat solve by component; NaN without a source
+	Mended    int       // vertices that the heat order had too early
+	Solves    int       // linear solves
+	Shortest  float64   // least mean edge length of the components with sources
+	Reached   int       // vertices with a finite distance
+	MeanError float64   // estimated mean relative error, see estimate
+	MaxError  float64   // estimated largest relative error
 }
 
 // longest is how many times √t a part may measure, from its sources: u falls like
@@ -69,20 +71,21 @@ func (s *Solver) Distance(ctx context.Context, which []int, opt DistanceOptions)
 		return nil, err
 	}
 	s.options.Progress("front", 0.4)
-	order = orderByKey(order, w.d)
+	order = orderByKey(order, w.distances())
 	w.sweep(order)
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
 	s.options.Progress("front", 0.8)
 	res.Mended = w.mend(order)
-	res.Distance = append([]float64(nil), w.d...)
+	res.Distance = w.distances()
 	s.options.Progress("front", 1)
 	if opt.Smooth {
 		if err := s.poissonDistance(ctx, w, src, res); err != nil {
 			return nil, err
 		}
 	}
+	res.MeanError, res.MaxError = w.estimate(res.Distance)
 	for v, d := range res.Distance {
 		switch {
 		case s.component[v] < 0:
@@ -194,9 +197,41 @@ func (s *Solver) heatTimes(src sources, far []float64, smoothing float64, res *D
 	return tau
 }
 
+// distances are those that the front has found.
+func (w *front) distances() []float64 {
+	d := make([]float64, len(w.at))
+	for v := range d {
+		d[v] = w.at[v].d
+	}
+	return d
+}
+
+// estimate tells the mean and the largest relative error over the mesh's vertices, from
+// what the front met: where two ends of an edge foretold a value, their difference,
+// where one did, what it was off by at the other, and where a shadow's edge or a bend
+// was not certain, what hangs on it; added up along each ray. Errors of either sign
+// partly cancel, and some go unseen, mostly near the worst places: the factors are
+// fitted to exact distances on some 30 shapes (TestErrorEstimate), where the
+// true mean lies below the estimate on all but one and is a third of it in the median.
+// It is the error of distance on the flat triangles; they may differ from the part.
+func (w *front) estimate(d []float64) (mean, most float64) {
+	const rounding = 1e-13 // of some tens of unfoldings
+	count := 0.0
+	for v := range w.s.NumOriginal {
+		a := &w.at[v]
+		if a.d > 0 && !math.IsInf(a.d, 1) {
+			err := (a.err + math.Abs(d[v]-a.d)) / a.d // d is the front's own, or the Poisson field
+			mean += err
+			most = max(most, err)
+			count++
+		}
+	}
+	return 1.6*mean/max(count, 1) + 0.04*most + rounding, 2*most + 10*rounding
+}
+
 // walk visits the vertices breadth-first from the sources and measures each path.
 func (w *front) walk(sources []int32) (order []int32, far []float64) {
-	far = make([]float64, len(w.d))
+	far = make([]float64, len(w.at))
 	for v := range far {
 		far[v] = math.Inf(1)
 	}

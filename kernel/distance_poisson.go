@@ -27,7 +27,8 @@ func (s *Solver) poissonDistance(ctx context.Context, w *front, src sources, res
 	n := s.surface.NumVertices
 	held := make([]bool, n)
 	known := make([]float64, n)
-	for v, d := range w.d {
+	for v := range w.at {
+		d := w.at[v].d
 		c := s.component[v]
 		if c < 0 || math.IsNaN(tau[c]) || d <= nearDisc*math.Sqrt(res.Times[c]) {
 			held[v] = true

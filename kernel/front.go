@@ -22,16 +22,8 @@ type front struct {
 	s     *mesh.Surface
 	frame *frames
 
-	d     []float64 // distance, by vertex; +Inf where the front has not been
-	left  []float64 // curvature of the front to the left of the ray; +Inf at a source
-	right []float64 // to the right: another where the ray has grazed a corner, see alongEdge
-	back  []float64 // angle of the ray back, in the vertex's frame; NaN where there is none
-	noise []float64 // how far directions may be off, from the curvature the ray has met
-	weak  []bool    // reached on the word of one end of an edge only, or round a bend
-	sides []sides   // where the front started last, left and right of the ray
-	done  []bool    // may give its value on
-	fixed []bool    // a source: not to be changed
-	line  []bool    // by halfedge: the edge is a source as a whole; nil if there are none
+	at   []state // by vertex
+	line []bool  // by halfedge: the edge is a source as a whole; nil if there are none
 }
 
 const (
@@ -47,42 +39,23 @@ const (
 	rim = 1e-9
 )
 
-func newFront(s *mesh.Surface, f *frames) *front {
-	n := s.NumVertices
-	return &front{
-		s: s, frame: f,
-		d: make([]float64, n), left: make([]float64, n), right: make([]float64, n), back: make([]float64, n), noise: make([]float64, n),
-		weak: make([]bool, n), sides: make([]sides, n), done: make([]bool, n), fixed: make([]bool, n),
-	}
+// A state is what the front knows at one vertex.
+type state struct {
+	arrival
+	done  bool // may give it on
+	fixed bool // a source: not to be changed
 }
 
-// start forgets the last wave and sets the sources: vertices, and edges as a whole.
-func (w *front) start(vertices []int32, line []bool) {
-	for v := range w.d {
-		w.d[v], w.done[v], w.fixed[v] = math.Inf(1), false, false
-	}
-	w.line = line
-	source := func(v int32) {
-		w.d[v], w.left[v], w.right[v], w.back[v], w.noise[v] = 0, math.Inf(1), math.Inf(1), math.NaN(), 0
-		w.sides[v] = sides{noOrigin, noOrigin}
-		w.done[v], w.fixed[v] = true, true
-	}
-	for _, v := range vertices {
-		source(v)
-	}
-	for h, on := range line {
-		if on {
-			source(w.s.Vert[h])
-			source(w.s.Vert[next(int32(h))])
-		}
-	}
-}
-
-// An arrival is the front's state at a vertex.
+// An arrival is how the front comes to a vertex.
 type arrival struct {
-	d, left, right, back, noise float64
-	sides                       sides
-	weak                        bool
+	d     float64 // distance; +Inf where the front has not been
+	left  float64 // curvature of the front to the left of the ray; +Inf at a source
+	right float64 // to the right: another where the ray has grazed a corner, see alongEdge
+	back  float64 // angle of the ray back, in the vertex's frame; NaN where there is none
+	noise float64 // how far directions may be off, from the curvature the ray has met
+	err   float64 // how far d may be off: what estimates on the way differed by, added up
+	sides sides   // where the front started last, left and right of the ray
+	weak  bool    // on the word of one end of an edge only, or round a bend
 }
 
 // An origin is the corner that a front last turned round, and the direction, in the
@@ -104,49 +77,74 @@ func (best *arrival) offer(a arrival) {
 	}
 }
 
-// sweep takes the vertices in the given order once, each from those before it.
-func (w *front) sweep(order []int32) {
-	for v := range w.done {
-		w.done[v] = w.fixed[v]
+func newFront(s *mesh.Surface, f *frames) *front {
+	return &front{s: s, frame: f, at: make([]state, s.NumVertices)}
+}
+
+// start forgets the last wave and sets the sources: vertices, and edges as a whole.
+func (w *front) start(vertices []int32, line []bool) {
+	for v := range w.at {
+		w.at[v] = state{arrival: nowhere}
 	}
-	for _, v := range order {
-		if w.fixed[v] {
-			continue
+	w.line = line
+	source := func(v int32) {
+		w.at[v] = state{
+			arrival: arrival{left: math.Inf(1), right: math.Inf(1), back: math.NaN(), sides: sides{noOrigin, noOrigin}},
+			done:    true, fixed: true,
 		}
-		w.set(v, w.arrive(v))
-		w.done[v] = !math.IsInf(w.d[v], 1)
+	}
+	for _, v := range vertices {
+		source(v)
+	}
+	for h, on := range line {
+		if on {
+			source(w.s.Vert[h])
+			source(w.s.Vert[next(int32(h))])
+		}
 	}
 }
 
-func (w *front) set(v int32, a arrival) {
-	w.d[v], w.left[v], w.right[v], w.back[v] = a.d, a.left, a.right, a.back
-	w.noise[v], w.weak[v], w.sides[v] = a.noise, a.weak, a.sides
+// nowhere is the state of a vertex that the front has not come to.
+var nowhere = arrival{d: math.Inf(1), back: math.NaN(), sides: sides{noOrigin, noOrigin}, weak: true}
+
+// sweep takes the vertices in the given order once, each from those before it.
+func (w *front) sweep(order []int32) {
+	for v := range w.at {
+		w.at[v].done = w.at[v].fixed
+	}
+	for _, v := range order {
+		if !w.at[v].fixed {
+			a := w.arrive(v)
+			w.at[v].arrival, w.at[v].done = a, !math.IsInf(a.d, 1)
+		}
+	}
 }
 
 // mend takes up whatever a vertex later in the order could have told an earlier one:
-// values go down until none can. It returns how many vertices changed.
+// values go down until none can. Weak ones, now that all is known, are first found
+// anew. It returns how many vertices changed.
 func (w *front) mend(order []int32) (changed int) {
 	var queue vertexHeap
-	queued := make([]bool, len(w.d))
+	queued := make([]bool, len(w.at))
 	try := func(v int32, anew bool) bool {
-		if w.fixed[v] {
+		now := &w.at[v]
+		if now.fixed {
 			return false
 		}
 		a := w.arrive(v)
-		if !(a.d < w.d[v]-w.slack(v)) && !(anew && w.weak[v] && a.d != w.d[v]) {
+		if !(a.d < now.d-w.slack(v)) && !(anew && now.weak && a.d != now.d) {
 			return false
 		}
-		w.set(v, a)
-		w.done[v] = true
+		now.arrival, now.done = a, true
 		changed++
 		return true
 	}
 	wake := func(v int32) {
 		for _, h := range w.frame.out(v) {
 			for _, u := range [2]int32{w.s.Vert[next(h)], w.s.Vert[prev(h)]} {
-				if !queued[u] && !w.fixed[u] && w.d[u] > w.d[v]-w.s.Length[h] {
+				if !queued[u] && !w.at[u].fixed && w.at[u].d > w.at[v].d-w.s.Length[h] {
 					queued[u] = true
-					queue.push(w.d[v], u)
+					queue.push(w.at[v].d, u)
 				}
 			}
 		}
@@ -156,7 +154,7 @@ func (w *front) mend(order []int32) (changed int) {
 			wake(v)
 		}
 	}
-	for looks := 0; len(queue) > 0 && looks < 60*len(w.d); looks++ {
+	for looks := 0; len(queue) > 0 && looks < 60*len(w.at); looks++ {
 		v := queue.pop()
 		queued[v] = false
 		if try(v, false) {
@@ -170,25 +168,25 @@ func (w *front) mend(order []int32) (changed int) {
 // than the spread of equally good values on a curved skin, of which the least is no
 // better than the first.
 func (w *front) slack(v int32) float64 {
-	if math.IsInf(w.d[v], 1) {
+	if math.IsInf(w.at[v].d, 1) {
 		return 0
 	}
-	return 1e-13*w.d[v] + w.noise[v]*w.frame.edge[v]
+	return 1e-13*w.at[v].d + w.at[v].noise*w.frame.edge[v]
 }
 
 // arrive continues the front to vertex v: the least value over its triangles.
 func (w *front) arrive(v int32) arrival {
-	best := arrival{d: math.Inf(1), back: math.NaN(), weak: true}
+	best := nowhere
 	for _, h := range w.frame.out(v) {
 		h1, h2 := next(h), prev(h)
 		a, b := w.s.Vert[h1], w.s.Vert[h2]
-		if w.done[a] {
+		if w.at[a].done {
 			w.alongEdge(&best, v, a, h, w.frame.at[h1]+w.frame.wide[h1], w.frame.at[h])
 		}
-		if w.done[b] {
+		if w.at[b].done {
 			w.alongEdge(&best, v, b, h2, w.frame.at[h2], w.frame.at[h]+w.frame.wide[h])
 		}
-		if w.done[a] || w.done[b] {
+		if w.at[a].done || w.at[b].done {
 			w.throughEdge(&best, v, a, b, h)
 		}
 	}
@@ -207,38 +205,45 @@ func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64)
 	if w.source(q) {
 		anew = noOrigin
 	}
-	a := arrival{d: w.d[q] + length, left: 1 / length, right: 1 / length, back: fromV, sides: sides{anew, anew}}
+	a := arrival{d: w.at[q].d + length, left: 1 / length, right: 1 / length, back: fromV, sides: sides{anew, anew}}
 	if a.d >= best.d {
 		return
 	}
 	if !w.source(q) {
 		toLeft, toRight := w.ahead(q, edge, fromQ)
-		tol := flatNoise + curvedNoise*w.noise[q]
+		tol := flatNoise + curvedNoise*w.at[q].noise
 		straightLeft, straightRight := math.Abs(toLeft-math.Pi) <= tol, math.Abs(toRight-math.Pi) <= tol
 		if straightRight || straightLeft && toRight < math.Pi {
-			a.right, a.sides.right = w.right[q]/max(1+w.right[q]*length, 1e-9), w.sides[q].right
+			a.right, a.sides.right = w.at[q].right/max(1+w.at[q].right*length, 1e-9), w.at[q].sides.right
 		}
 		if straightLeft || straightRight && toLeft < math.Pi {
-			a.left, a.sides.left = w.left[q]/max(1+w.left[q]*length, 1e-9), w.sides[q].left
+			a.left, a.sides.left = w.at[q].left/max(1+w.at[q].left*length, 1e-9), w.at[q].sides.left
 		}
-		a.weak = !straightLeft && !straightRight && min(toLeft, toRight) < math.Pi
+		if angle := min(toLeft, toRight); !straightLeft && !straightRight && angle < math.Pi {
+			a.weak = true
+			// Straightened, were there nothing in the way, it would be this much shorter.
+			r := ray{kappa: max(w.at[q].left, w.at[q].right), ex: 1}
+			sin, cos := math.Sincos(angle)
+			a.err = length - r.at(length*cos, length*sin)
+		}
 	}
 	a.left, a.right = w.bend(a.left, length, v), w.bend(a.right, length, v)
-	a.noise = max(w.noise[q], w.frame.turning[v])
+	a.noise = max(w.at[q].noise, w.frame.turning[v])
+	a.err += w.at[q].err
 	best.offer(a)
 }
 
 // source tells whether the front starts at q: it has no ray to it.
-func (w *front) source(q int32) bool { return math.IsInf(w.left[q], 1) }
+func (w *front) source(q int32) bool { return math.IsInf(w.at[q].left, 1) }
 
 // ahead is the angle between the ray back at q and an edge there, which leaves at the
 // given angle of q's frame: round the left side of the ray, and round the right.
 func (w *front) ahead(q, edge int32, angle float64) (left, right float64) {
 	if w.frame.kind[q] == odd {
-		either := w.frame.search(w.s, q, w.back[q], edge, false)
+		either := w.frame.search(w.s, q, w.at[q].back, edge, false)
 		return either, either
 	}
-	return w.frame.turn(q, angle, w.back[q]), w.frame.turn(q, w.back[q], angle)
+	return w.frame.turn(q, angle, w.at[q].back), w.frame.turn(q, w.at[q].back, angle)
 }
 
 // bend corrects the curvature of a front that reached v over the given length on a
@@ -267,25 +272,28 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	if w.line != nil && w.line[h1] {
 		if tri.x >= 0 && tri.x <= length {
 			kappa := w.bend(0, tri.y, v)
-			best.offer(arrival{tri.y, kappa, kappa, w.frame.at[h] + tri.angleAtV(tri.x), w.frame.turning[v], sides{noOrigin, noOrigin}, false})
+			best.offer(arrival{
+				d: tri.y, left: kappa, right: kappa, back: w.frame.at[h] + tri.angleAtV(tri.x),
+				noise: w.frame.turning[v], sides: sides{noOrigin, noOrigin},
+			})
 		}
 		return
 	}
 	var ra, rb ray
 	var knowsA, knowsB bool
 	da, db, noise := math.Inf(1), math.Inf(1), w.frame.turning[v]
-	if w.done[a] {
-		da, noise = w.d[a], max(noise, w.noise[a])
-		ra, knowsA = w.rayAt(a, w.right[a], w.sides[a].right, w.gap(a, h1, w.back[a], w.frame.at[h1]), 0)
+	if w.at[a].done {
+		da, noise = w.at[a].d, max(noise, w.at[a].noise)
+		ra, knowsA = w.rayAt(a, w.at[a].right, w.at[a].sides.right, w.gap(a, h1, w.at[a].back, w.frame.at[h1]), 0)
 	}
-	if w.done[b] {
-		db, noise = w.d[b], max(noise, w.noise[b])
-		rb, knowsB = w.rayAt(b, w.left[b], w.sides[b].left, w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.back[b]), length)
+	if w.at[b].done {
+		db, noise = w.at[b].d, max(noise, w.at[b].noise)
+		rb, knowsB = w.rayAt(b, w.at[b].left, w.at[b].sides.left, w.gap(b, h1, w.frame.at[h2]+w.frame.wide[h2], w.at[b].back), length)
 	}
 	if min(da, db) >= best.d && !best.weak {
 		return // the front passes this edge when it is past v
 	}
-	pass := passage{v, h, tri, noise, !w.done[a] || !w.done[b]}
+	pass := passage{v: v, h: h, tri: tri, noise: noise, weak: !w.at[a].done || !w.at[b].done}
 	if pass.weak {
 		if knowsA {
 			w.offer(best, pass, ra, ra)
@@ -310,15 +318,25 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	case okA && okB:
 		w.offer(best, pass, ra, rb)
 	case okA:
+		pass.doubt = math.Abs(tooA)
 		w.offer(best, pass, ra, ra)
 	case okB:
+		pass.doubt = math.Abs(tooB)
 		w.offer(best, pass, rb, rb)
 	default:
 		// An end that has more than the other end's front foretells lies in its shadow.
-		if knowsA && !(tooA < -tol && w.roundCorner(best, pass, ra, rb, knowsB, -1, tol)) {
+		switch {
+		case !knowsA:
+		case tooA < -tol:
+			w.roundCorner(best, pass, ra, rb, knowsB, -1, tol)
+		default:
 			w.offer(best, pass, ra, ra)
 		}
-		if knowsB && !(tooB < -tol && w.roundCorner(best, pass, rb, ra, knowsA, 1, tol)) {
+		switch {
+		case !knowsB:
+		case tooB < -tol:
+			w.roundCorner(best, pass, rb, ra, knowsA, 1, tol)
+		default:
 			w.offer(best, pass, rb, rb)
 		}
 	}
@@ -327,14 +345,14 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 // roundCorner offers v what comes to it where r, the front at one end of the edge, has
 // the other end in its shadow: the front there has turned round corners, and which of
 // them v is lit by tells their string. side is 1 if the corners lie on the left of r
-// (the dark end is a), -1 if on the right. It returns false if v is lit by r itself.
+// (the dark end is a), -1 if on the right.
 //
 // The corners are laid into the plane one by one, backwards from the dark end: the ray
 // back at a corner, the length to the one before, and the angle that the string makes
 // there on the lit side are known. v is lit by the first that sees it past the next.
-func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, side, tol float64) bool {
+func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, side, tol float64) {
 	if !known || !(dark.kappa > 0) {
-		return true // nothing is known of what stands between
+		return // nothing is known of what stands between
 	}
 	past := func(x, y float64) bool { // v is on the lit side of the ray of r past (x, y)
 		dx, dy := r.kappa*(x-r.x)-r.ex, r.kappa*y-r.ey
@@ -347,26 +365,27 @@ func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, s
 	const mostCorners = 200
 	for range mostCorners {
 		c := at.from.corner
-		if c < 0 || math.Abs(w.d[c]+math.Hypot(at.ax-at.x, at.ay-at.y)-reached) > 4*tol {
+		if c < 0 || math.Abs(w.at[c].d+math.Hypot(at.ax-at.x, at.ay-at.y)-reached) > 4*tol {
 			break // not a string of corners, or one of them has been reached another way since
 		}
-		reached = w.d[c]
-		if math.Abs(r.at(at.x, at.y)-w.d[c]) <= 4*tol { // on the front of r itself
+		reached = w.at[c].d
+		if math.Abs(r.at(at.x, at.y)-w.at[c].d) <= 4*tol { // on the front of r itself
 			if past(at.x, at.y) {
-				return false
+				w.offer(best, p, r, r)
+				return
 			}
 			if !known {
 				lit = at
 			}
-			w.offerCorner(best, p, lit)
-			return true
+			w.offerCorner(best, p, lit, max(r.err, dark.err))
+			return
 		}
-		before, kappa, gap := w.sides[c].left, w.left[c], 0.0
+		before, kappa, gap := w.at[c].sides.left, w.at[c].left, 0.0
 		if side > 0 {
-			gap = w.frame.turn(c, w.back[c], at.from.exit)
+			gap = w.frame.turn(c, w.at[c].back, at.from.exit)
 		} else {
-			before, kappa = w.sides[c].right, w.right[c]
-			gap = w.frame.turn(c, at.from.exit, w.back[c])
+			before, kappa = w.at[c].sides.right, w.at[c].right
+			gap = w.frame.turn(c, at.from.exit, w.at[c].back)
 		}
 		if !(gap < 3*math.Pi) || !(kappa > 0) || math.IsInf(kappa, 1) {
 			break
@@ -381,7 +400,10 @@ func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, s
 		}
 		at = corner{before, at.x + bx/kappa, at.y + by/kappa, at.x, at.y}
 	}
-	return !past(first.x, first.y) // what stands next to the dark end will do
+	if past(first.x, first.y) { // what stands next to the dark end will do, for want of better
+		p.doubt = dark.d - r.at(dark.x, 0)
+		w.offer(best, p, r, r)
+	}
 }
 
 // A corner that a front has turned round, laid into the plane of a face at (x, y); its
@@ -392,24 +414,27 @@ type corner struct {
 }
 
 // offerCorner takes what a front that starts anew at the corner foretells at v.
-func (w *front) offerCorner(best *arrival, p passage, c corner) {
+func (w *front) offerCorner(best *arrival, p passage, c corner, err float64) {
 	dx, dy := p.tri.x-c.x, p.tri.y-c.y
 	radius := math.Hypot(dx, dy)
-	value := w.d[c.from.corner] + radius
+	value := w.at[c.from.corner].d + radius
 	x := c.x - dx*c.y/dy
 	if value >= best.d && !best.weak || c.y >= 0 || x < -rim*p.tri.length || x > (1+rim)*p.tri.length {
 		return
 	}
 	c.from.exit += math.Atan2((c.ax-c.x)*dy-(c.ay-c.y)*dx, (c.ax-c.x)*dx+(c.ay-c.y)*dy)
 	kappa := w.bend(1/radius, math.Hypot(x-p.tri.x, p.tri.y), p.v)
-	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, sides{c.from, c.from}, p.weak})
+	best.offer(arrival{
+		d: value, left: kappa, right: kappa, back: w.frame.at[p.h] + p.tri.angleAtV(x),
+		noise: p.noise, err: err, sides: sides{c.from, c.from}, weak: p.weak,
+	})
 }
 
 // gap is the angle at q, counter-clockwise, between the ray back and an edge that the
 // front may enter a face through; from and to are those two in q's frame.
 func (w *front) gap(q, edge int32, from, to float64) float64 {
 	if w.frame.kind[q] == odd {
-		return w.frame.search(w.s, q, w.back[q], edge, true)
+		return w.frame.search(w.s, q, w.at[q].back, edge, true)
 	}
 	return w.frame.turn(q, from, to)
 }
@@ -420,7 +445,8 @@ type passage struct {
 	v, h  int32
 	tri   triangle
 	noise float64
-	weak  bool // one end of the edge is not known yet
+	weak  bool    // one end of the edge is not known yet
+	doubt float64 // what a value on the word of one end may be off by
 }
 
 // offer takes what the ray r foretells at v (or its mean with the ray s of the other
@@ -431,6 +457,7 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		return
 	}
 	value, kappa := r.reach(p.tri)
+	err := r.err + p.doubt
 	if s != r {
 		xs, ok := s.crossing(p.tri)
 		if !ok {
@@ -440,6 +467,7 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		x = (x + xs) / 2
 		share := 1 - min(max(x/p.tri.length, 0), 1)
 		other, otherKappa := s.reach(p.tri)
+		err = share*r.err + (1-share)*s.err + math.Abs(value-other)
 		value = share*value + (1-share)*other
 		kappa = share*kappa + (1-share)*otherKappa
 	}
@@ -454,7 +482,10 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		from.exit += r.angleFrom(p.tri)
 	}
 	kappa = w.bend(kappa, math.Hypot(x-p.tri.x, p.tri.y), p.v)
-	best.offer(arrival{value, kappa, kappa, w.frame.at[p.h] + p.tri.angleAtV(x), p.noise, sides{from, from}, p.weak})
+	best.offer(arrival{
+		d: value, left: kappa, right: kappa, back: w.frame.at[p.h] + p.tri.angleAtV(x),
+		noise: p.noise, err: err, sides: sides{from, from}, weak: p.weak,
+	})
 }
 
 // triangle is a face laid into the plane: a = (0, 0), b = (length, 0), v = (x, y).
@@ -468,8 +499,8 @@ func (t triangle) angleAtV(x float64) float64 {
 // A ray is the front near one end of an edge ab, in the frame of the face beyond: it
 // passed (x, 0) at d with curvature kappa, coming from direction (ex, ey), ey < 0.
 type ray struct {
-	d, kappa, x, ex, ey float64
-	from                origin
+	d, kappa, x, ex, ey, err float64
+	from                     origin
 }
 
 // rayAt lays the front at q, which is at (x, 0), into the frame of a face that it
@@ -484,7 +515,7 @@ func (w *front) rayAt(q int32, kappa float64, from origin, gap, x float64) (r ra
 	if x > 0 {
 		cos = -cos
 	}
-	return ray{d: w.d[q], kappa: kappa, x: x, ex: cos, ey: -sin, from: from}, true
+	return ray{d: w.at[q].d, kappa: kappa, x: x, ex: cos, ey: -sin, err: w.at[q].err, from: from}, true
 }
 
 // at is the distance that the ray foretells at (x, y).
