@@ -115,8 +115,8 @@ func TestDistanceConverges(t *testing.T) {
 	}
 }
 
-// noisy is m with every coordinate off by up to amplitude.
-func noisy(m *mesh.Mesh, amplitude float64) *mesh.Mesh {
+// scanned is m with every coordinate off by up to amplitude.
+func scanned(m *mesh.Mesh, amplitude float64) *mesh.Mesh {
 	rng := rand.New(rand.NewPCG(5, 6))
 	return meshtest.Map(m, func(p [3]float64) [3]float64 {
 		for axis := range p {
@@ -126,7 +126,7 @@ func noisy(m *mesh.Mesh, amplitude float64) *mesh.Mesh {
 	})
 }
 
-// comb is a profile of n teeth, and box2 one of a plate.
+// comb is a profile of n teeth.
 func comb(n int) [][2]float64 {
 	profile := [][2]float64{{0, 0}, {2 * float64(n), 0}}
 	for i := n - 1; i >= 0; i-- {
@@ -196,12 +196,12 @@ var shapes = []struct {
 	{"Möbius band", func() *mesh.Mesh { return meshtest.MoebiusBand(100, 12) }, 50},
 	{"book of three pages", func() *mesh.Mesh { return meshtest.Book(3, 20) }, 50},
 	{"book of five pages", func() *mesh.Mesh { return meshtest.Book(5, 16) }, 5},
-	{"scan, noise of h/16", func() *mesh.Mesh { return noisy(meshtest.Icosphere(5, 0.25, 1), 0.001) }, 0},
-	{"scan, noise of h/4", func() *mesh.Mesh { return noisy(meshtest.Icosphere(5, 0.25, 1), 0.005) }, 0},
+	{"scan, noise of h/16", func() *mesh.Mesh { return scanned(meshtest.Icosphere(5, 0.25, 1), 0.001) }, 0},
+	{"scan, noise of h/4", func() *mesh.Mesh { return scanned(meshtest.Icosphere(5, 0.25, 1), 0.005) }, 0},
 	{"scanned box, noise of h/20", func() *mesh.Mesh {
-		return noisy(meshtest.Box(2, 1, 0.5, [3]int{40, 20, 10}, 0.25, 3), 0.0025)
+		return scanned(meshtest.Box(2, 1, 0.5, [3]int{40, 20, 10}, 0.25, 3), 0.0025)
 	}, 0},
-	{"scanned torus, noise of h/20", func() *mesh.Mesh { return noisy(meshtest.Torus(2, 1, 120, 60, 0.25, 4), 0.005) }, 77},
+	{"scanned torus, noise of h/20", func() *mesh.Mesh { return scanned(meshtest.Torus(2, 1, 120, 60, 0.25, 4), 0.005) }, 77},
 }
 
 // The default settings on every kind of shape, against exact propagation over the same
