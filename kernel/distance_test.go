@@ -242,7 +242,7 @@ func TestDistanceFromPointsInside(t *testing.T) {
 // medley is what fronts meet with: corners, curvature, noise and a rim. All of it is
 // jittered, so that no four vertices lie on a circle and flips have no ties to break.
 func medley() *mesh.Mesh {
-	return meshtest.Join(noisy(meshtest.Box(2, 1, 0.5, [3]int{24, 12, 6}, 0.24, 3), 0.003), meshtest.ShakenSphere(4, 2),
+	return meshtest.Join(scanned(meshtest.Box(2, 1, 0.5, [3]int{24, 12, 6}, 0.24, 3), 0.003), meshtest.ShakenSphere(4, 2),
 		meshtest.Paraboloid(1, 24, 0.24, 1), meshtest.SlitPlate(12, 0.5, 1.5, 0.24, 1))
 }
 
