@@ -7,10 +7,11 @@ import "math"
 type envelope []window
 
 const (
-	// Differences of distance below tie (relative) are round-off: the images of one
-	// source differ by some ulps after many unfoldings. The older window then stays,
-	// so that no window is replaced by its own image.
-	tie = 1e-14
+	// Differences of distance below tie (of the distance) or blur (of the coordinates it
+	// is computed from, which are larger near a source) are round-off: the images of one
+	// source differ by some ulps after many unfoldings. The older window then stays, so
+	// that no window is replaced by its own image, for ever.
+	tie, blur = 1e-14, 2e-15
 	// Windows narrower than this (of the halfedge) are dropped. What falls into the
 	// cracks is caught by slack.
 	narrow = 1e-14
@@ -153,7 +154,8 @@ func (e *envelope) weave(w window, thin float64, spare *envelope) {
 func duel(w, old *window, l, r float64) (cut [4]float64, ours [3]bool, parts int) {
 	ol, or := old.at(l), old.at(r)
 	fl, fr := w.at(l)-ol, w.at(r)-or
-	epsL, epsR := tie*ol, tie*or
+	noise := blur * (r + math.Abs(old.x) + math.Abs(w.x))
+	epsL, epsR := max(tie*ol, noise), max(tie*or, noise)
 	cut[0], cut[1], parts = l, r, 1
 	switch {
 	case fl < -epsL && fr > epsR:
@@ -165,7 +167,7 @@ func duel(w, old *window, l, r float64) (cut [4]float64, ours [3]bool, parts int
 	case fl < -epsL || fr < -epsR: // w, but for a dip of old
 		ours[0] = true
 		if t, ok := dip(old, w, l, r); ok && fl < 0 && fr < 0 {
-			if o := old.at(t); w.at(t)-o > tie*o {
+			if o := old.at(t); w.at(t)-o > max(tie*o, noise) {
 				f := w.at(t) - o
 				cut[1], cut[2], cut[3], parts = meet(w, old, l, t, fl, f), meet(w, old, t, r, f, fr), r, 3
 				ours[2] = true
@@ -173,7 +175,7 @@ func duel(w, old *window, l, r float64) (cut [4]float64, ours [3]bool, parts int
 		}
 	default: // old, but for a dip of w; a tie goes to the one that has been carried on
 		if t, ok := dip(w, old, l, r); ok {
-			if o := old.at(t); w.at(t)-o < -tie*o {
+			if o := old.at(t); w.at(t)-o < -max(tie*o, noise) {
 				f := w.at(t) - o
 				cut[1], cut[2], cut[3], parts = l, r, r, 3
 				if fl > 0 {

@@ -51,7 +51,12 @@ func (s *Solver) lay(h int32) (l layout) {
 	}
 	l.toA = math.Sqrt(cx*cx + cy*cy + cz*cz)
 	l.toB = math.Sqrt(dx*dx + dy*dy + dz*dz)
-	nx, ny, nz := by*cz-bz*cy, bz*cx-bx*cz, bx*cy-by*cx
+	// The shorter of AC, BC: the direction of a very short side must come out right.
+	ex, ey, ez := cx, cy, cz
+	if l.toB < l.toA {
+		ex, ey, ez = dx, dy, dz
+	}
+	nx, ny, nz := by*ez-bz*ey, bz*ex-bx*ez, bx*ey-by*ex
 	l.y = math.Sqrt(nx*nx+ny*ny+nz*nz) / l.length
 	l.x = (bx*cx + by*cy + bz*cz) / l.length
 	if l.toA > 0 {

@@ -101,9 +101,10 @@ func (s *Solver) sendsOn(v int32) bool {
 		angle += math.Atan2(l.y, l.x)
 	}
 	// One fan around v? Turn from the first corner, both ways if there is a rim.
-	seen := s.turn(corners[0], corners[0])
-	if rims > 0 {
-		seen += s.turn(corners[0], preceding(corners[0])) - 1
+	seen, closed := s.turn(corners[0], corners[0])
+	if !closed {
+		more, _ := s.turn(corners[0], preceding(corners[0]))
+		seen += more - 1
 	}
 	if seen < len(corners) {
 		return true
@@ -115,14 +116,15 @@ func (s *Solver) sendsOn(v int32) bool {
 }
 
 // turn counts the corners met when turning about the tail of corner, across halfedge
-// side first, until the start or a rim is reached. All edges must be manifold.
-func (s *Solver) turn(corner, side int32) int {
+// side first, until the start (closed) or a rim is reached. All edges must be manifold.
+func (s *Solver) turn(corner, side int32) (count int, closed bool) {
 	v := s.mesh.Triangles[corner]
-	count, h := 1, side
+	count = 1
+	h := side
 	for {
 		p := s.glue[h]
 		if p == h {
-			return count
+			return count, false
 		}
 		// In p's triangle leave by the other halfedge at v.
 		out := p
@@ -130,7 +132,7 @@ func (s *Solver) turn(corner, side int32) int {
 			out = following(p)
 		}
 		if out == corner {
-			return count
+			return count, true
 		}
 		if out == p {
 			h = preceding(p)

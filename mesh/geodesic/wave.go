@@ -286,6 +286,7 @@ func (v *wave) lower(vertex int32, d float64) bool {
 	if !(d < v.distance[vertex]) || d > v.radius {
 		return false
 	}
+	old := v.distance[vertex]
 	v.distance[vertex] = d
 	if v.sends[vertex] == 0 {
 		v.sends[vertex] = sendsNot
@@ -293,7 +294,7 @@ func (v *wave) lower(vertex int32, d float64) bool {
 			v.sends[vertex] = sendsOn
 		}
 	}
-	if v.sends[vertex] != sendsNot {
+	if v.sends[vertex] == sendsOn || v.sends[vertex] == sent && d < old*(1-tie) {
 		v.sends[vertex] = sendsOn
 		v.events.push(event{d, int32(len(v.waits)) + vertex})
 	}
@@ -425,7 +426,7 @@ func (v *wave) cross(h int32) {
 	left := v.gate(l.gateA, l.a, l.c, l.toA, &v.left)
 	right := v.gate(l.gateB, l.c, l.b, l.toB, &v.right)
 	watched := v.targets.faces != nil && v.targets.faces[h/3] != nil
-	slack := slackShare * l.length
+	slack, thin := slackShare*l.length, narrow*l.length
 	windows := v.pool.lists[v.list[h]-1]
 	for i := range windows {
 		w := &windows[i]
@@ -446,9 +447,14 @@ func (v *wave) cross(h int32) {
 			v.rate(&left)
 			v.rate(&right)
 		}
-		if w.b0 < apex && l.toA > 0 {
-			var out window
-			out.flags, out.far = w.flags, w.far
+		b0, b1 := w.b0, w.b1
+		if w.y <= thin && w.x >= b0-thin && w.x <= b1+thin && w.flags&parallel == 0 {
+			// The source lies on the edge: all its rays leave from one point, which
+			// round-off must not put outside.
+			b0, b1 = min(b0, max(w.x-thin, 0)), max(b1, min(w.x+thin, l.length))
+		}
+		if b0 < apex && l.toA > 0 {
+			out := window{far: w.far, flags: w.flags}
 			if w.flags&parallel != 0 {
 				out.x = w.x*l.uax + w.y*l.uay
 				out.y = w.y*l.uax - w.x*l.uay
@@ -456,20 +462,19 @@ func (v *wave) cross(h int32) {
 				out.x = w.x*l.uax - w.y*l.uay
 				out.y = max(w.x*l.uay+w.y*l.uax, 0)
 			}
-			out.b0 = land(w, w.b0, w.b0, l.uax, -l.uay, l.toA)
+			out.b0 = land(w, b0, b0, l.uax, -l.uay, l.toA)
 			out.b1 = l.toA
-			if w.b1 < apex {
-				out.b1 = land(w, w.b1, w.b1, l.uax, -l.uay, l.toA)
+			if b1 < apex {
+				out.b1 = land(w, b1, b1, l.uax, -l.uay, l.toA)
 			}
 			if out.b1 > out.b0 {
 				v.emit(&left, &out)
 			}
 		}
-		if w.b1 > apex && l.toB > 0 {
-			var out window
-			out.flags, out.far = w.flags, w.far
+		if b1 > apex && l.toB > 0 {
+			out := window{far: w.far, flags: w.flags}
 			if w.flags&parallel != 0 {
-				// Axis from C to B: (ubx, -uby).
+				// The axis from C to B is (ubx, -uby).
 				out.x = w.x*l.ubx - w.y*l.uby
 				out.y = w.y*l.ubx + w.x*l.uby
 				out.far += w.x*l.x + w.y*l.y
@@ -477,9 +482,9 @@ func (v *wave) cross(h int32) {
 				out.x = l.toB - ((l.length-w.x)*l.ubx - w.y*l.uby)
 				out.y = max((l.length-w.x)*l.uby+w.y*l.ubx, 0)
 			}
-			out.b1 = l.toB - land(w, w.b1, l.length-w.b1, l.ubx, l.uby, l.toB)
-			if w.b0 > apex {
-				out.b0 = l.toB - land(w, w.b0, l.length-w.b0, l.ubx, l.uby, l.toB)
+			out.b1 = l.toB - land(w, b1, l.length-b1, l.ubx, l.uby, l.toB)
+			if b0 > apex {
+				out.b0 = l.toB - land(w, b0, l.length-b0, l.ubx, l.uby, l.toB)
 			}
 			if out.b1 > out.b0 {
 				v.emit(&right, &out)
@@ -517,4 +522,4 @@ func land(w *window, b, arm, ux, uy, length float64) float64 {
 // still be given its distance: windows that end at a vertex may gape there by
 // round-off. What is wrong with such a distance is of second order in the gap where
 // the vertex bends paths, and loses against a better one where it does not.
-const slackShare = 1e-10
+const slackShare = 1e-12
