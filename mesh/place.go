@@ -168,13 +168,13 @@ func (s *Surface) weightsIn(f int32, x [3]float64) (w [3]float64) {
 	for k := range p {
 		copy(p[k][:], s.Positions[3*s.Vert[3*f+int32(k)]:])
 	}
-	n := cross(sub(p[1], p[0]), sub(p[2], p[0]))
-	total := dot(n, n)
+	n := cross3(minus3(p[1], p[0]), minus3(p[2], p[0]))
+	total := dot3(n, n)
 	if total == 0 {
 		return [3]float64{1, 0, 0}
 	}
 	for k := range w {
-		w[k] = dot(n, cross(sub(p[(k+1)%3], x), sub(p[(k+2)%3], x))) / total
+		w[k] = dot3(n, cross3(minus3(p[(k+1)%3], x), minus3(p[(k+2)%3], x))) / total
 	}
 	return w
 }
@@ -224,12 +224,4 @@ func (s *Surface) moveGlue(from, to int32) {
 		return
 	}
 	s.Glue[to] = to
-}
-
-func sub(a, b [3]float64) [3]float64 { return [3]float64{a[0] - b[0], a[1] - b[1], a[2] - b[2]} }
-
-func dot(a, b [3]float64) float64 { return a[0]*b[0] + a[1]*b[1] + a[2]*b[2] }
-
-func cross(a, b [3]float64) [3]float64 {
-	return [3]float64{a[1]*b[2] - a[2]*b[1], a[2]*b[0] - a[0]*b[2], a[0]*b[1] - a[1]*b[0]}
 }
