@@ -157,10 +157,19 @@ func TestDistanceIsExactOnFlatFaces(t *testing.T) {
 		const sides, rows = 12, 5000
 		side := 2 * math.Sin(math.Pi/sides)
 		m := meshtest.Cylinder(1, side*rows, sides, rows, 0.2, 3)
-		flatMatch(t, m, field(t, m, mesh.AtVertex(0)), func(v int) float64 {
+		_, solver := placed(t, m, mesh.AtVertex(0))
+		res, err := solver.Distance(context.Background(), nil, DistanceOptions{})
+		if err != nil {
+			t.Fatal(err)
+		}
+		flatMatch(t, m, res.Distance[:m.NumVertices()], func(v int) float64 {
 			column := v / (rows + 1)
 			return math.Hypot(side*float64(min(column, sides-column)), spot(m, v)[2]-spot(m, 0)[2])
 		})
+		// u falls like exp(-d/√t) and has to stay above 1e-308 = exp(-709).
+		if reach := side * rows / math.Sqrt(res.Times[0]); !(reach < 700) {
+			t.Errorf("the tube is %.0f times √t long, want less than 700", reach)
+		}
 	})
 }
 
@@ -243,10 +252,11 @@ func TestDistanceFromPointsInside(t *testing.T) {
 // jittered, so that no four vertices lie on a circle and flips have no ties to break.
 func medley() *mesh.Mesh {
 	return meshtest.Join(scanned(meshtest.Box(2, 1, 0.5, [3]int{24, 12, 6}, 0.24, 3), 0.003), meshtest.ShakenSphere(4, 2),
-		meshtest.Paraboloid(1, 24, 0.24, 1), meshtest.SlitPlate(12, 0.5, 1.5, 0.24, 1))
+		meshtest.Paraboloid(1, 24, 0.24, 1), meshtest.SlitPlate(12, 0.5, 1.5, 0.24, 1),
+		meshtest.Stretch(meshtest.LPlate(12, 0.24, 1), 1, 30, 1)) // slivers, where the heat order errs and is mended
 }
 
-var medleyData = []mesh.Datum{mesh.AtVertex(17), mesh.AtVertex(1200), mesh.AtVertex(3700), mesh.AtVertex(4300)}
+var medleyData = []mesh.Datum{mesh.AtVertex(17), mesh.AtVertex(1200), mesh.AtVertex(3700), mesh.AtVertex(4300), mesh.AtVertex(5000)}
 
 // Lengths are relative and vertices without names: what does not change the shape
 // changes distances by rounding only. (A value is the sum of some hundred steps, each of
@@ -505,6 +515,24 @@ func TestDistanceSmooth(t *testing.T) {
 		t.Logf("%s: %v", tc.name, miss)
 		if !(miss.mean <= tc.mean) {
 			t.Errorf("%s: %v; want a mean of %g %% at most", tc.name, miss, 100*tc.mean)
+		}
+	}
+}
+
+// A power of two scales every length without rounding, so no bit of a distance may
+// change but its exponent: any constant that has a unit would show.
+func TestDistanceHasNoUnit(t *testing.T) {
+	t.Parallel()
+	m := meshtest.Join(meshtest.Cone(30*degree, 2, 30, 10), perforated(4, 8)())
+	data := []mesh.Datum{mesh.AtVertex(7), mesh.AtVertex(310)}
+	_, v := resolved(t, m, data...)
+	want := ask(t, v, nil)
+	for _, exponent := range []int{-12, 20} {
+		_, v := resolved(t, meshtest.Scale(m, math.Ldexp(1, exponent)), data...)
+		for u, d := range ask(t, v, nil) {
+			if back := math.Ldexp(d, -exponent); back != want[u] {
+				t.Fatalf("scaled by 2^%d: vertex %d at %v, and at %v unscaled", exponent, u, back, want[u])
+			}
 		}
 	}
 }
