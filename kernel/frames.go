@@ -45,6 +45,10 @@ const (
 	flatBend = 0.06
 )
 
+// mostTurning bounds the turn that is taken for discretisation. On meshes that bend more
+// from one vertex to the next, fronts that differ by more are different fronts.
+const mostTurning = 0.012
+
 func newFrames(s *mesh.Surface) frames {
 	n := s.NumVertices
 	f := frames{
@@ -245,6 +249,6 @@ func (f *frames) measureCurvature(s *mesh.Surface) {
 		if sumArea > 0 {
 			f.curvature[v] = sumDefect / sumArea
 		}
-		f.turning[v] = most
+		f.turning[v] = min(most, mostTurning)
 	}
 }
