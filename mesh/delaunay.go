@@ -1,6 +1,9 @@
 package mesh
 
-import "math"
+import (
+	"math"
+	"slices"
+)
 
 // weightFloor is how far below zero, against the size of its cotangents, an edge
 // weight may lie before it counts as negative: a right angle built by splitting an
@@ -14,10 +17,10 @@ const weightFloor = 1e-10
 // metric as it is. At most budget edges are split; what is left is in Unmended.
 func (s *Surface) Delaunay(budget int) {
 	l := s.newLegaliser(budget)
-	for h := int32(len(s.Vert)) - 1; h >= 0; h-- {
-		if s.Glue[h] >= h { // one halfedge of each edge with two faces; more of stranger ones do no harm
-			l.push(h)
-		}
+	// One halfedge of each edge with two faces; more of stranger ones do no harm.
+	wrong := gather(len(s.Vert), func(h int32) bool { return s.Glue[h] >= h && s.negative(h) })
+	for _, h := range slices.Backward(wrong) {
+		l.push(h)
 	}
 	s.Unmended = 0
 	l.run()
@@ -38,7 +41,7 @@ type legaliser struct {
 
 func (s *Surface) newLegaliser(budget int) *legaliser {
 	return &legaliser{
-		s: s, queue: make([]int32, 0, len(s.Vert)), queued: make([]bool, len(s.Vert)),
+		s: s, queued: make([]bool, len(s.Vert)),
 		// Each flip lowers the Dirichlet energy of every function, so flips end; rounding
 		// could undo that on a face without area: the bound makes sure.
 		mostFlips: s.Flips + 200*(len(s.Vert)+1000),

@@ -14,117 +14,131 @@ import (
 // negative: one that rounding left a hair below 0 is set to 0. Vertices without faces
 // have empty rows. O(n).
 func (s *Surface) Laplacian() *sparse.Matrix {
-	pattern, place := s.pattern()
-	l := &sparse.Matrix{Pattern: pattern, Diag: make([]float64, s.NumVertices), Off: make([]float64, len(pattern.Adj))}
-	for h := range int32(len(s.Vert)) {
-		k := place[h]
-		if k < 0 {
-			continue
+	l := s.assemble(func(h int32) float64 { return -s.cot[h] / 2 })
+	eachBlock(s.NumVertices, func(_, lo, hi int) {
+		for i := lo; i < hi; i++ {
+			row := l.Off[l.Ptr[i]:l.Ptr[i+1]]
+			for k, w := range row {
+				if w > 0 && w <= 1e-6 && s.Unmended == 0 {
+					row[k] = 0
+				}
+			}
+			for _, w := range row {
+				l.Diag[i] -= w
+			}
 		}
-		l.Off[k] -= s.cot[h] / 2
-	}
-	s.mirror(l, place)
-	for k, w := range l.Off {
-		if w > 0 && w <= 1e-6 && s.Unmended == 0 {
-			l.Off[k] = 0
-		}
-	}
-	for i := range l.Diag {
-		for _, w := range l.Off[l.Ptr[i]:l.Ptr[i+1]] {
-			l.Diag[i] -= w
-		}
-	}
+	})
 	return l
 }
 
 // LumpedMass gives each vertex a third of the area of its triangles (by corner).
 func (s *Surface) LumpedMass() []float64 {
 	m := make([]float64, s.NumVertices)
-	for f := range int32(s.NumFaces()) {
-		third := s.Area(f) / 3
-		for h := 3 * f; h < 3*f+3; h++ {
-			m[s.Vert[h]] += third
+	for f, area := range s.areas() {
+		for _, v := range s.Vert[3*f : 3*f+3] {
+			m[v] += area / 3
 		}
 	}
 	return m
+}
+
+// areas are those of the faces.
+func (s *Surface) areas() []float64 {
+	areas := make([]float64, s.NumFaces())
+	eachBlock(len(areas), func(_, lo, hi int) {
+		for f := lo; f < hi; f++ {
+			areas[f] = s.Area(int32(f))
+		}
+	})
+	return areas
 }
 
 // ConsistentMass is the mass matrix of piecewise linear functions on the pattern of
 // Laplacian: a triangle of area A adds A/6 for each of its corners and A/12 for each
 // pair.
 func (s *Surface) ConsistentMass() *sparse.Matrix {
-	pattern, place := s.pattern()
-	m := &sparse.Matrix{Pattern: pattern, Diag: make([]float64, s.NumVertices), Off: make([]float64, len(pattern.Adj))}
-	for f := range int32(s.NumFaces()) {
-		area := s.Area(f)
-		for h := 3 * f; h < 3*f+3; h++ {
-			m.Diag[s.Vert[h]] += area / 6
-			if k := place[h]; k >= 0 {
-				m.Off[k] += area / 12
-			} else {
-				m.Diag[s.Vert[h]] += area / 6 // a loop: both ends are this vertex
-			}
+	areas := s.areas()
+	m := s.assemble(func(h int32) float64 { return areas[h/3] / 12 })
+	for h := range int32(len(s.Vert)) {
+		v := s.Vert[h]
+		m.Diag[v] += areas[h/3] / 6
+		if v == s.head(h) {
+			m.Diag[v] += areas[h/3] / 6 // a loop: both ends are this vertex
 		}
 	}
-	s.mirror(m, place)
 	return m
 }
 
-// pattern finds who neighbours whom. place[h] is the entry, in the row of the smaller
-// end of halfedge h, that its edge adds to; -1 for a loop.
-func (s *Surface) pattern() (p *sparse.Pattern, place []int64) {
+// assemble is the matrix whose entry (i, j) is the sum of share(h) over the halfedges
+// between i and j, either way; its diagonal is 0. Each row is summed on its own, but in
+// the order of halfedges, which is why the matrix is symmetric to the last bit.
+func (s *Surface) assemble(share func(h int32) float64) *sparse.Matrix {
 	n := s.NumVertices
-	// Rows with repetitions first: each face names its edges once from either end.
-	start := make([]int64, n+1)
-	for h := range int32(len(s.Vert)) {
-		if a, b := s.Vert[h], s.head(h); a != b {
-			start[a+1]++
-			start[b+1]++
-		}
+	start, leaving := s.leaving()
+	ptr := make([]int64, n+1)
+	type block struct {
+		adj []int32
+		off []float64
 	}
+	blocks := make([]block, (n+blockSize-1)/blockSize)
+	eachBlock(n, func(number, lo, hi int) {
+		b := block{make([]int32, 0, 7*(hi-lo)), make([]float64, 0, 7*(hi-lo))}
+		var keys []uint64 // other end << 32 | halfedge
+		for v := int32(lo); v < int32(hi); v++ {
+			keys = keys[:0]
+			for _, h := range leaving[start[v]:start[v+1]] {
+				g := prev(h)
+				if to := s.head(h); to != v {
+					keys = append(keys, uint64(to)<<32|uint64(h))
+				}
+				if from := s.Vert[g]; from != v {
+					keys = append(keys, uint64(from)<<32|uint64(g))
+				}
+			}
+			sortShort(keys)
+			for i, key := range keys {
+				if i == 0 || key>>32 != keys[i-1]>>32 {
+					b.adj, b.off = append(b.adj, int32(key>>32)), append(b.off, 0)
+					ptr[v+1]++
+				}
+				b.off[len(b.off)-1] += share(int32(uint32(key)))
+			}
+		}
+		blocks[number] = b
+	})
 	for v := range n {
-		start[v+1] += start[v]
+		ptr[v+1] += ptr[v]
 	}
-	raw := make([]int32, start[n])
-	fill := slices.Clone(start[:n])
-	for h := range int32(len(s.Vert)) {
-		if a, b := s.Vert[h], s.head(h); a != b {
-			raw[fill[a]], raw[fill[b]] = b, a
-			fill[a]++
-			fill[b]++
-		}
+	a := &sparse.Matrix{
+		Pattern: &sparse.Pattern{Ptr: ptr, Adj: make([]int32, ptr[n])},
+		Diag:    make([]float64, n),
+		Off:     make([]float64, ptr[n]),
 	}
-	p = &sparse.Pattern{Ptr: make([]int64, n+1)}
-	used := int64(0)
-	for v := range n {
-		row := raw[start[v]:start[v+1]]
-		slices.Sort(row)
-		row = slices.Compact(row)
-		p.Ptr[v] = used
-		used += int64(copy(raw[used:], row)) // never overtakes the rows still to come
-	}
-	p.Ptr[n] = used
-	p.Adj = slices.Clone(raw[:used]) // lets the longer array go
-	place = make([]int64, len(s.Vert))
-	for h := range int32(len(s.Vert)) {
-		a, b := s.Vert[h], s.head(h)
-		place[h] = -1
-		if a != b {
-			place[h] = p.Find(min(a, b), max(a, b))
-		}
-	}
-	return p, place
+	eachBlock(n, func(number, lo, _ int) {
+		copy(a.Adj[ptr[lo]:], blocks[number].adj)
+		copy(a.Off[ptr[lo]:], blocks[number].off)
+		blocks[number] = block{}
+	})
+	return a
 }
 
-// mirror copies the entries that were summed in the row of an edge's smaller end to
-// the row of its larger end.
-func (s *Surface) mirror(a *sparse.Matrix, place []int64) {
-	for h := range int32(len(s.Vert)) {
-		if k := place[h]; k >= 0 {
-			v, w := s.Vert[h], s.head(h)
-			a.Off[a.Find(max(v, w), min(v, w))] = a.Off[k]
-		}
+// leaving lists the halfedges that leave each vertex v, in rising order, as
+// halfedges[start[v]:start[v+1]].
+func (s *Surface) leaving() (start, halfedges []int32) {
+	start = make([]int32, s.NumVertices+1)
+	for _, v := range s.Vert {
+		start[v+1]++
 	}
+	for v := range s.NumVertices {
+		start[v+1] += start[v]
+	}
+	halfedges = make([]int32, len(s.Vert))
+	fill := slices.Clone(start)
+	for h, v := range s.Vert {
+		halfedges[fill[v]] = int32(h)
+		fill[v]++
+	}
+	return start, halfedges
 }
 
 // Components numbers the connected parts of the surface, in the order of their first

@@ -27,16 +27,10 @@ func (s *Surface) Place(data []Datum) error {
 		return err
 	}
 	pieces := map[int32][]int32{} // faces that a mesh triangle has been cut into
-	var faceOf map[int32]int32
+	faceOf := s.facesOf(data)
 	for i, d := range data {
 		switch {
 		case d.Point != nil:
-			if faceOf == nil {
-				faceOf = make(map[int32]int32, len(s.parent))
-				for f, t := range s.parent {
-					faceOf[t] = int32(f)
-				}
-			}
 			v, err := s.placePoint(*d.Point, d.Name, faceOf, pieces)
 			if err != nil {
 				return err
@@ -59,6 +53,29 @@ func (s *Surface) Place(data []Datum) error {
 		}
 	}
 	return nil
+}
+
+// facesOf finds the faces of the mesh triangles that points lie in.
+func (s *Surface) facesOf(data []Datum) map[int32]int32 {
+	faceOf := map[int32]int32{}
+	for _, d := range data {
+		if d.Point != nil {
+			faceOf[d.Point.Triangle] = -1
+		}
+	}
+	if len(faceOf) > 0 {
+		for f, t := range s.parent {
+			if _, asked := faceOf[t]; asked {
+				faceOf[t] = int32(f)
+			}
+		}
+	}
+	for t, f := range faceOf {
+		if f < 0 {
+			delete(faceOf, t)
+		}
+	}
+	return faceOf
 }
 
 // NumData is the number of data that Place was given.
@@ -87,9 +104,17 @@ func (s *Surface) markEdges(data []Datum) error {
 	if len(wanted) == 0 {
 		return nil
 	}
+	end := make([]bool, s.NumVertices) // of an edge that is wanted: most are passed over quickly
+	for e := range wanted {
+		for _, v := range e {
+			if v >= 0 && int(v) < len(end) {
+				end[v] = true
+			}
+		}
+	}
 	numbers := map[string]int32{}
 	found := make([]int, len(data))
-	for h := range int32(len(s.Vert)) {
+	for _, h := range gather(len(s.Vert), func(h int32) bool { return end[s.Vert[h]] && end[s.head(h)] }) {
 		a, b := s.Vert[h], s.head(h)
 		in := wanted[[2]int32{min(a, b), max(a, b)}]
 		if len(in) == 0 {

@@ -3,6 +3,7 @@ package mesh
 import (
 	"fmt"
 	"math"
+	"slices"
 )
 
 // A Surface is a triangulation known by its edge lengths: connectivity and a flat
@@ -71,49 +72,139 @@ func (e *RangeError) Error() string {
 // NewSurface measures the edges of m and glues its triangles. Triangles with a
 // repeated corner, exact duplicates, and flat triangles that alone hold a vertex are
 // left out; faces are turned so that neighbours agree wherever the surface allows.
-// The error is an *EmptyError or a *RangeError. O(n).
+// Faces are in no order that the mesh knows: see alongCurve. The error is an
+// *EmptyError or a *RangeError. O(n).
 func NewSurface(m *Mesh) (*Surface, error) {
-	s := &Surface{
-		mesh:        m,
-		NumVertices: m.NumVertices(),
-		NumOriginal: m.NumVertices(),
-		Positions:   append([]float64(nil), m.Positions...),
-		NoValue:     make([]bool, m.NumVertices()),
-	}
 	if err := m.checkRange(); err != nil {
 		return nil, err
 	}
-	s.keepFaces(m)
+	s := &Surface{mesh: m, NumOriginal: m.NumVertices()}
+	s.parent = alongCurve(m.Positions, m.Triangles)
+	corners := make([]int32, len(m.Triangles))
+	eachBlock(len(s.parent), func(_, lo, hi int) {
+		for i := lo; i < hi; i++ {
+			copy(corners[3*i:3*i+3], m.Triangles[3*s.parent[i]:])
+		}
+	})
+	// Until the end, vertices are numbered as they come along the curve, too.
+	number, vertex := numberByFirst(corners, m.NumVertices())
+	s.NumVertices = len(vertex)
+	s.Positions = make([]float64, 3*len(vertex))
+	eachBlock(len(vertex), func(_, lo, hi int) {
+		for v := lo; v < hi; v++ {
+			copy(s.Positions[3*v:3*v+3], m.Positions[3*vertex[v]:])
+		}
+	})
+	renumber(corners, corners, number)
+	s.keepFaces(corners)
 	if len(s.Vert) == 0 {
 		return nil, &EmptyError{Triangles: m.NumTriangles()}
 	}
 	s.orient()
-	s.Length = make([]float64, len(s.Vert))
-	for h := range s.Vert {
-		s.Length[h] = dist(s.Positions, s.Vert[h], s.head(int32(h)))
-	}
+	s.Length, s.cot = make([]float64, len(s.Vert)), make([]float64, len(s.Vert))
+	eachBlock(s.NumFaces(), func(_, lo, hi int) {
+		for h := int32(3 * lo); h < int32(3*hi); h++ {
+			s.Length[h] = dist(s.Positions, s.Vert[h], s.head(h))
+		}
+	})
 	s.guardLengths()
-	s.cot = make([]float64, len(s.Vert))
-	for f := range len(s.Vert) / 3 {
-		s.setCotangents(int32(f))
-	}
+	eachBlock(s.NumFaces(), func(_, lo, hi int) {
+		for f := lo; f < hi; f++ {
+			s.setCotangents(int32(f))
+		}
+	})
+	s.numberAsMesh(vertex)
 	return s, nil
 }
 
-func (m *Mesh) checkRange() error {
-	var lo, hi [3]float64
-	for axis := range lo {
-		lo[axis], hi[axis] = math.Inf(1), math.Inf(-1)
+// numberAsMesh gives vertices the numbers that the mesh has for them.
+func (s *Surface) numberAsMesh(vertex []int32) {
+	renumber(s.Vert, s.Vert, vertex)
+	noValue := make([]bool, s.NumOriginal)
+	for v := range noValue {
+		noValue[v] = true
 	}
-	for _, v := range m.Triangles {
-		for axis := range lo {
-			x := m.Positions[3*v+int32(axis)]
-			lo[axis], hi[axis] = min(lo[axis], x), max(hi[axis], x)
+	for v, none := range s.NoValue {
+		noValue[vertex[v]] = none
+	}
+	s.NoValue, s.NumVertices = noValue, s.NumOriginal
+	s.Positions = slices.Clip(s.mesh.Positions) // the mesh's own: a vertex that is added makes a copy
+}
+
+// renumber sets dst[i] to number[src[i]]. dst may be src.
+func renumber(dst, src, number []int32) {
+	eachBlock(len(src), func(_, lo, hi int) {
+		for i, v := range src[lo:hi] {
+			dst[lo+i] = number[v]
+		}
+	})
+}
+
+// Renumbered is s with its vertices numbered as its faces come, so that what is near on
+// the surface is near in memory, and the vertex of s that each one is. Vertices of the
+// mesh still come before added ones. Of either surface nothing may be changed from then
+// on: they share what does not name vertices. O(n).
+func (s *Surface) Renumbered() (r *Surface, vertex []int32) {
+	number := make([]int32, s.NumVertices)
+	for v := range number {
+		number[v] = -1
+	}
+	vertex = make([]int32, s.NumVertices)
+	original, added := int32(0), int32(s.NumOriginal)
+	take := func(v int32) {
+		if v < int32(s.NumOriginal) {
+			number[v], vertex[original] = original, v
+			original++
+		} else {
+			number[v], vertex[added] = added, v
+			added++
 		}
 	}
-	size := 0.0
-	for axis := range lo {
-		size = max(size, hi[axis]-lo[axis], math.Abs(lo[axis]), math.Abs(hi[axis]))
+	for _, v := range s.Vert {
+		if number[v] < 0 {
+			take(v)
+		}
+	}
+	for v := range number { // in no face
+		if number[v] < 0 {
+			take(int32(v))
+		}
+	}
+	c := *s
+	c.Vert, c.NoValue, c.Positions = make([]int32, len(s.Vert)), make([]bool, len(s.NoValue)), make([]float64, len(s.Positions))
+	renumber(c.Vert, s.Vert, number)
+	eachBlock(s.NumVertices, func(_, lo, hi int) {
+		for v := lo; v < hi; v++ {
+			c.NoValue[v] = s.NoValue[vertex[v]]
+			copy(c.Positions[3*v:3*v+3], s.Positions[3*vertex[v]:])
+		}
+	})
+	c.sites = slices.Clone(s.sites)
+	for i, v := range s.sites {
+		if v >= 0 {
+			c.sites[i] = number[v]
+		}
+	}
+	return &c, vertex
+}
+
+func (m *Mesh) checkRange() error {
+	blocks := make([]box3, (len(m.Triangles)+blockSize-1)/blockSize)
+	eachBlock(len(m.Triangles), func(block, lo, hi int) {
+		b := noBox()
+		for _, v := range m.Triangles[lo:hi] {
+			b.add(point3(m.Positions, v))
+		}
+		blocks[block] = b
+	})
+	box := noBox()
+	for _, b := range blocks {
+		box.add(b.lo)
+		box.add(b.hi)
+	}
+	size := box.size()
+	for axis := range box.lo {
+		size = max(size, math.Abs(box.lo[axis]), math.Abs(box.hi[axis]))
 	}
 	if len(m.Triangles) > 0 && size > 0 && !(size >= 1e-140 && size <= 1e140) {
 		return &RangeError{Size: size}
@@ -121,103 +212,152 @@ func (m *Mesh) checkRange() error {
 	return nil
 }
 
-// keepFaces chooses the triangles that make up the surface.
-func (s *Surface) keepFaces(m *Mesh) {
+// keepFaces chooses the triangles that make up the surface, given the corners of all,
+// and glues them.
+func (s *Surface) keepFaces(corners []int32) {
+	const flat, kept, crowded, collapsed, duplicate = 0, 1, 2, 3, 4
+	state := make([]uint8, len(corners)/3)
+	eachBlock(len(state), func(_, lo, hi int) {
+		for f := lo; f < hi; f++ {
+			if hasArea(s.Positions, corners[3*f], corners[3*f+1], corners[3*f+2]) {
+				state[f] = kept
+			}
+		}
+	})
+	s.NoValue = make([]bool, s.NumVertices)
 	for v := range s.NoValue {
 		s.NoValue[v] = true
 	}
-	t := m.Triangles
-	for f := range m.NumTriangles() {
-		a, b, c := t[3*f], t[3*f+1], t[3*f+2]
-		if hasArea(m.Positions, a, b, c) {
-			s.NoValue[a], s.NoValue[b], s.NoValue[c] = false, false, false
+	for f, st := range state {
+		if st == kept {
+			for _, v := range corners[3*f : 3*f+3] {
+				s.NoValue[v] = false
+			}
 		}
 	}
-	next := glue(t, m.NumVertices())
-	seen := map[[3]int32]struct{}{} // only of triangles at edges with more than two faces
-	for f := range int32(m.NumTriangles()) {
-		a, b, c := t[3*f], t[3*f+1], t[3*f+2]
-		switch {
-		case a == b || b == c || c == a, s.NoValue[a] || s.NoValue[b] || s.NoValue[c]:
-			s.Collapsed++
-			continue
-		case duplicated(t, next, seen, f):
-			s.Duplicate++
-			continue
+	s.Glue = glue(corners, s.NumVertices)
+	eachBlock(len(state), func(_, lo, hi int) {
+		for f := lo; f < hi; f++ {
+			a, b, c := corners[3*f], corners[3*f+1], corners[3*f+2]
+			if a == b || b == c || c == a || s.NoValue[a] || s.NoValue[b] || s.NoValue[c] {
+				state[f] = collapsed
+				continue
+			}
+			state[f] = kept
+			h := int32(3 * f)
+			switch g := s.Glue[h]; {
+			case g == h:
+			case s.Glue[g] != h:
+				state[f] = crowded
+			case g < h && corners[g] == corners[h] && corners[prev(g)] == corners[prev(h)]:
+				state[f] = duplicate
+			}
 		}
-		s.Vert = append(s.Vert, a, b, c)
-		s.parent = append(s.parent, f)
+	})
+	// Where an edge has two faces one look has sufficed; elsewhere a table keeps the cost
+	// linear however many faces share an edge.
+	seen := map[[3]int32]struct{}{}
+	left := 0
+	for f, st := range state {
+		if st == crowded {
+			key := cyclic(corners[3*f : 3*f+3])
+			st = kept
+			if _, twice := seen[key]; twice {
+				st = duplicate
+			}
+			seen[key] = struct{}{}
+		}
+		switch st {
+		case kept:
+			if left < f {
+				copy(corners[3*left:3*left+3], corners[3*f:])
+				s.parent[left] = s.parent[f]
+			}
+			left++
+		case collapsed:
+			s.Collapsed++
+		case duplicate:
+			s.Duplicate++
+		}
+	}
+	s.Vert, s.parent = corners[:3*left], s.parent[:left]
+	if left < len(state) {
+		s.Glue = glue(s.Vert, s.NumVertices)
 	}
 }
 
-// duplicated tells whether an earlier triangle has the corners of f in the same
-// cyclic order. Where an edge has two faces one look suffices; elsewhere a table
-// keeps the cost linear however many faces share an edge.
-func duplicated(t, next []int32, seen map[[3]int32]struct{}, f int32) bool {
-	h := 3 * f
-	g := next[h]
-	if g == h {
-		return false
-	}
-	third := func(h int32) int32 { return t[h-h%3+(h+2)%3] }
-	if next[g] == h {
-		return g < h && t[g] == t[h] && third(g) == third(h)
-	}
-	key := [3]int32{t[h], t[h+1], t[h+2]}
+// cyclic is a triangle turned so that its least corner comes first.
+func cyclic(t []int32) [3]int32 {
+	key := [3]int32(t)
 	for key[0] > key[1] || key[0] > key[2] {
 		key[0], key[1], key[2] = key[1], key[2], key[0]
 	}
-	_, twice := seen[key]
-	seen[key] = struct{}{}
-	return twice
+	return key
 }
 
 // orient turns faces so that two faces of one edge run along it in opposite
 // directions, as far as the surface allows, and marks the edges where it does not
 // (a Möbius band has some). Edges with more than two faces pass nothing on.
 func (s *Surface) orient() {
-	s.Glue = glue(s.Vert, s.NumVertices)
-	const unseen, kept, turned = 0, 1, 2
-	state := make([]uint8, len(s.Vert)/3)
+	s.mark = make([]int32, len(s.Vert))
+	disagree := func(h int32) bool {
+		g := s.Glue[h]
+		return g != h && s.Glue[g] == h && s.Vert[g] == s.Vert[h]
+	}
+	if len(gather(len(s.Vert), disagree)) == 0 {
+		return
+	}
+	if turned, any := s.facesToTurn(); any {
+		// Halfedges ab, bc, ca of a turned face become ac, cb, ba.
+		moved := func(h int32) int32 {
+			if turned[h/3] {
+				return h - h%3 + 2 - h%3
+			}
+			return h
+		}
+		after := make([]int32, len(s.Glue))
+		for h, g := range s.Glue {
+			after[moved(int32(h))] = moved(g)
+		}
+		s.Glue = after
+		for f, is := range turned {
+			if is {
+				s.Vert[3*f+1], s.Vert[3*f+2] = s.Vert[3*f+2], s.Vert[3*f+1]
+			}
+		}
+	}
+	for _, h := range gather(len(s.Vert), disagree) {
+		s.mark[h] = seam
+	}
+}
+
+// facesToTurn walks over each part from its first face, which stays as it is.
+func (s *Surface) facesToTurn() (turned []bool, any bool) {
+	turned = make([]bool, s.NumFaces())
+	seen := make([]bool, s.NumFaces())
 	var stack []int32
-	anyTurned := false
-	for f := range int32(len(state)) {
-		if state[f] != unseen {
+	for f := range int32(s.NumFaces()) {
+		if seen[f] {
 			continue
 		}
-		state[f] = kept
+		seen[f] = true
 		stack = append(stack[:0], f)
 		for len(stack) > 0 {
 			f := stack[len(stack)-1]
 			stack = stack[:len(stack)-1]
 			for h := 3 * f; h < 3*f+3; h++ {
 				g := s.Glue[h]
-				if g == h || s.Glue[g] != h || state[g/3] != unseen {
+				if g == h || s.Glue[g] != h || seen[g/3] {
 					continue
 				}
-				state[g/3] = state[f]
-				if s.Vert[g] == s.Vert[h] {
-					state[g/3] = kept + turned - state[f]
-				}
-				anyTurned = anyTurned || state[g/3] == turned
+				seen[g/3] = true
+				turned[g/3] = turned[f] != (s.Vert[g] == s.Vert[h])
+				any = any || turned[g/3]
 				stack = append(stack, g/3)
 			}
 		}
 	}
-	if anyTurned {
-		for f, st := range state {
-			if st == turned {
-				s.Vert[3*f+1], s.Vert[3*f+2] = s.Vert[3*f+2], s.Vert[3*f+1]
-			}
-		}
-		s.Glue = glue(s.Vert, s.NumVertices)
-	}
-	s.mark = make([]int32, len(s.Vert))
-	for h, g := range s.Glue {
-		if int(g) != h && s.Glue[g] == int32(h) && s.Vert[g] == s.Vert[h] {
-			s.mark[h] = seam
-		}
-	}
+	return turned, any
 }
 
 // guardLengths lengthens edges until every triangle has a slack of slackFloor. An
@@ -232,12 +372,7 @@ func (s *Surface) guardLengths() {
 		}
 		return lo
 	}
-	var work []int32
-	for f := range int32(len(s.Vert) / 3) {
-		if s.slack(f) < slackFloor {
-			work = append(work, f)
-		}
-	}
+	work := gather(s.NumFaces(), func(f int32) bool { return s.slack(f) < slackFloor })
 	for rounds := 0; len(work) > 0 && rounds < 60; rounds++ {
 		var again []int32
 		for _, f := range work {

@@ -1,0 +1,170 @@
+package mesh
+
+import (
+	"math"
+	"runtime"
+)
+
+// alongCurve lists triangles in the order in which a Morton curve (G. Morton, IBM
+// technical report, 1966) passes their centres: neighbours on the surface then lie near
+// each other in memory, whatever the order of the file. A CAD system's is good as a
+// rule; a file in random order makes every step of the work miss the cache, which costs
+// two to four times the time from some 10^5 vertices on. Triangles of one place keep
+// their order. O(n), more where density varies by many orders of magnitude.
+func alongCurve(x []float64, triangles []int32) (order []int32) {
+	items := make([]uint64, len(triangles)/3) // place on the curve << 32 | triangle
+	eachBlock(len(items), func(_, lo, hi int) {
+		for f := lo; f < hi; f++ {
+			items[f] = uint64(f)
+		}
+	})
+	sortAlongCurve(items, make([]uint64, len(items)), x, triangles)
+	order = make([]int32, len(items))
+	eachBlock(len(items), func(_, lo, hi int) {
+		for i := lo; i < hi; i++ {
+			order[i] = int32(uint32(items[i]))
+		}
+	})
+	return order
+}
+
+const (
+	curveBits  = 10  // of each coordinate: a grid of 1024³ cells
+	crowdedRun = 256 // more triangles than this in one cell get a grid of their own
+)
+
+// sortAlongCurve sorts items, whose lower halves are triangles.
+func sortAlongCurve(items, scratch []uint64, x []float64, triangles []int32) {
+	centre := func(item uint64) (c [3]float64) { // thrice the centre, to be exact
+		t := triangles[3*uint32(item):][:3]
+		for axis := range c {
+			c[axis] = x[3*int(t[0])+axis] + x[3*int(t[1])+axis] + x[3*int(t[2])+axis]
+		}
+		return c
+	}
+	blocks := make([]box3, (len(items)+blockSize-1)/blockSize)
+	eachBlock(len(items), func(block, lo, hi int) {
+		b := noBox()
+		for _, item := range items[lo:hi] {
+			b.add(centre(item))
+		}
+		blocks[block] = b
+	})
+	box := noBox()
+	for _, b := range blocks {
+		box.add(b.lo)
+		box.add(b.hi)
+	}
+	size := box.size()
+	if !(size > 0) {
+		return
+	}
+	scale := math.Nextafter(1<<curveBits, 0) / size
+	eachBlock(len(items), func(_, lo, hi int) {
+		for i, item := range items[lo:hi] {
+			place := uint64(0)
+			for axis, c := range centre(item) {
+				cell := min(uint64((c-box.lo[axis])*scale), 1<<curveBits-1)
+				place |= spread3(cell) << axis
+			}
+			items[lo+i] = place<<32 | uint64(uint32(item))
+		}
+	})
+	radixSort(items, scratch)
+	for i := 0; i < len(items); {
+		j := i + 1
+		for j < len(items) && items[j]>>32 == items[i]>>32 {
+			j++
+		}
+		if j-i > crowdedRun {
+			sortAlongCurve(items[i:j], scratch[:j-i], x, triangles)
+		}
+		i = j
+	}
+}
+
+// spread3 puts two zeros before each of the ten bits of c.
+func spread3(c uint64) uint64 {
+	c = (c | c<<16) & 0x30000ff
+	c = (c | c<<8) & 0x300f00f
+	c = (c | c<<4) & 0x30c30c3
+	return (c | c<<2) & 0x9249249
+}
+
+// radixSort sorts items by their upper halves, below 1<<30, and keeps the order of
+// equal ones. scratch is as long as items. Each goroutine counts, and then moves, a
+// stretch of its own: three passes of ten bits.
+func radixSort(items, scratch []uint64) {
+	const digits = 1 << 10
+	parts := 1
+	if len(items) > 4*digits {
+		parts = runtime.GOMAXPROCS(0)
+	}
+	stretch := func(part int) (lo, hi int) { return len(items) * part / parts, len(items) * (part + 1) / parts }
+	place := make([][digits]int, parts)
+	from, to := items, scratch
+	for shift := 32; shift < 62; shift += 10 {
+		eachPart(parts, func(part int) {
+			count := &place[part]
+			clear(count[:])
+			lo, hi := stretch(part)
+			for _, item := range from[lo:hi] {
+				count[item>>shift%digits]++
+			}
+		})
+		total := 0
+		for digit := range digits {
+			for part := range parts {
+				count := place[part][digit]
+				place[part][digit] = total
+				total += count
+			}
+		}
+		eachPart(parts, func(part int) {
+			at := &place[part]
+			lo, hi := stretch(part)
+			for _, item := range from[lo:hi] {
+				digit := item >> shift % digits
+				to[at[digit]] = item
+				at[digit]++
+			}
+		})
+		from, to = to, from
+	}
+	copy(items, from) // three passes have ended in scratch
+}
+
+type box3 struct{ lo, hi [3]float64 }
+
+func noBox() box3 {
+	inf := math.Inf(1)
+	return box3{lo: [3]float64{inf, inf, inf}, hi: [3]float64{-inf, -inf, -inf}}
+}
+
+func (b *box3) add(p [3]float64) {
+	for axis, x := range p {
+		b.lo[axis], b.hi[axis] = min(b.lo[axis], x), max(b.hi[axis], x)
+	}
+}
+
+// size is the longest side.
+func (b *box3) size() float64 {
+	return max(b.hi[0]-b.lo[0], b.hi[1]-b.lo[1], b.hi[2]-b.lo[2])
+}
+
+// numberByFirst numbers vertices in the order in which corners name them. number is by
+// vertex, -1 where no corner does; vertex is its inverse.
+func numberByFirst(corners []int32, numVertices int) (number, vertex []int32) {
+	number = make([]int32, numVertices)
+	for v := range number {
+		number[v] = -1
+	}
+	vertex = make([]int32, 0, numVertices)
+	for _, v := range corners {
+		if number[v] < 0 {
+			number[v] = int32(len(vertex))
+			vertex = append(vertex, v)
+		}
+	}
+	return number, vertex
+}
