@@ -27,31 +27,44 @@ func Path(ctx context.Context, m *mesh.Mesh, from, to []mesh.Datum) (*Line, erro
 
 // Path is a shortest line from any of the data in from to any of those in to; nil if
 // no path leads there (within opt.Radius). It runs the wave until the target is
-// reached and follows straight lines back, unrolling triangles as it goes. Of opt it
+// reached and follows straight lines back, unrolling triangles as it goes; where those
+// go astray among triangles without area it runs the wave again and keeps its windows
+// to be led by them. Of opt it
 // heeds Radius and MaxBytes. Errors are those of Spread, and a *TraceError.
 func (s *Solver) Path(ctx context.Context, from, to []mesh.Datum, opt Options) (*Line, error) {
-	v, err := s.start(from, Options{Targets: to, Any: true, Radius: opt.Radius, MaxBytes: opt.MaxBytes}, true)
-	if err != nil {
-		return nil, err
+	opt = Options{Targets: to, Any: true, Radius: opt.Radius, MaxBytes: opt.MaxBytes}
+	for {
+		v, err := s.start(from, opt, true)
+		if err != nil {
+			return nil, err
+		}
+		if err := v.run(ctx); err != nil {
+			return nil, err
+		}
+		best, several := v.choose()
+		if math.IsInf(best.distance, 1) || best.distance > v.radius {
+			return nil, nil
+		}
+		t := tracer{wave: v, total: best.distance, several: several}
+		follow := t.trace
+		if opt.Keep {
+			follow = t.descend
+		}
+		err = &TraceError{Distance: best.distance}
+		if follow(&best) {
+			line := t.line()
+			line.From, line.To = t.source, best.target
+			n := len(line.S)
+			if math.Abs(line.S[n-1]-line.Length) <= 1e-9*line.Length {
+				return line, nil
+			}
+			err = &TraceError{Distance: line.Length, Length: line.S[n-1]}
+		}
+		if opt.Keep {
+			return nil, err
+		}
+		opt.Keep = true
 	}
-	if err := v.run(ctx); err != nil {
-		return nil, err
-	}
-	best, several := v.choose()
-	if math.IsInf(best.distance, 1) || best.distance > v.radius {
-		return nil, nil
-	}
-	t := tracer{wave: v, total: best.distance, several: several}
-	if !t.trace(&best) {
-		return nil, &TraceError{Distance: best.distance}
-	}
-	line := t.line()
-	line.To = best.target
-	line.From = t.source
-	if n := len(line.S); math.Abs(line.S[n-1]-line.Length) > 1e-9*line.Length {
-		return nil, &TraceError{Distance: line.Length, Length: line.S[n-1]}
-	}
-	return line, nil
 }
 
 // An arrival is one way to come to a target.

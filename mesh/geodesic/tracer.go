@@ -10,6 +10,9 @@ type tracer struct {
 	source    int       // the datum where it ended
 	points    []float64 // from the target on
 	triangles []int32   // that holds the stretch before each point; -1 at the first
+
+	// Where descend has been: vertices, and halfedges by which the line enters a triangle.
+	passed, entered map[int32]bool
 }
 
 const (
@@ -41,7 +44,7 @@ func (t *tracer) trace(a *arrival) (ok bool) {
 
 // fromVertex follows the line from a vertex, from bend to bend.
 func (t *tracer) fromVertex(vertex int32) bool {
-	for {
+	for range 2 * len(t.parents) { // more vertices than that are a circle
 		p := &t.parents[vertex]
 		t.several = t.several || p.several
 		switch {
@@ -54,18 +57,16 @@ func (t *tracer) fromVertex(vertex int32) bool {
 			if next < 0 {
 				return true
 			}
-			if !(t.distance[next] < t.distance[vertex]) {
-				return false
-			}
 			vertex = next
 		case p.from >= 0:
 			t.add(t.position(p.from), t.along(vertex, p.from))
 			vertex = p.from
 		default:
-			t.source = t.sourceAt(vertex)
+			t.source = int(t.ends[vertex])
 			return true
 		}
 	}
+	return false
 }
 
 // along is a triangle with the edge from a to b.
@@ -330,9 +331,6 @@ func (t *tracer) sourceIn(h int32, l *layout, x, y, eps float64) (datum int, ok 
 	}
 	return 0, false
 }
-
-// sourceAt is the datum that made vertex a source.
-func (t *tracer) sourceAt(vertex int32) int { return int(t.ends[vertex]) }
 
 // add puts a point at the line's end, reached through a triangle.
 func (t *tracer) add(p [3]float64, triangle int32) {

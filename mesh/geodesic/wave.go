@@ -329,6 +329,7 @@ type gate struct {
 	tail, head int32
 	length     float64
 	thin       float64
+	noise      float64 // what round-off may do to distances on the edge near a source
 	dt, dh     float64 // distances of tail and head
 	bound      float64 // no point of the edge is farther
 	least      float64 // least distance of the windows in run
@@ -337,7 +338,8 @@ type gate struct {
 }
 
 func (v *wave) gate(h, tail, head int32, length float64, run *envelope) gate {
-	g := gate{h: h, tail: tail, head: head, length: length, thin: narrow * length, least: math.Inf(1), run: run}
+	g := gate{h: h, tail: tail, head: head, length: length, thin: narrow * length, noise: blur * length,
+		least: math.Inf(1), run: run}
 	*run = (*run)[:0]
 	v.rate(&g)
 	g.hasTargets = v.targets.edges != nil && v.targets.edges[h] != nil
@@ -354,7 +356,7 @@ func (v *wave) rate(g *gate) {
 // goes through it: a way along the edge from one of its ends to the window's far end
 // is as short, or all of the edge is as near.
 func (v *wave) emit(g *gate, w *window) {
-	if w.reaches(w.b1, g.dt+w.b1) || w.reaches(w.b0, g.dh+(g.length-w.b0)) {
+	if w.reaches(w.b1, (g.dt+w.b1)*(1-blur)-g.noise) || w.reaches(w.b0, (g.dh+(g.length-w.b0))*(1-blur)-g.noise) {
 		return
 	}
 	t := w.nearest()
