@@ -240,11 +240,16 @@ func (f *frames) measureCurvature(s *mesh.Surface) {
 			continue
 		}
 		sumDefect, sumArea, most := defect[v], f.area[v], math.Abs(defect[v])
-		for _, h := range f.out(v) {
-			u := s.Vert[next(h)]
+		take := func(u int32) {
 			sumDefect += defect[u]
 			sumArea += f.area[u]
 			most = max(most, math.Abs(defect[u]))
+		}
+		for _, h := range f.out(v) {
+			take(s.Vert[next(h)])
+			if s.Boundary(prev(h)) {
+				take(s.Vert[prev(h)]) // no halfedge leads there
+			}
 		}
 		if sumArea > 0 {
 			f.curvature[v] = sumDefect / sumArea

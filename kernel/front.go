@@ -293,7 +293,7 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	if min(da, db) >= best.d && !best.weak {
 		return // the front passes this edge when it is past v
 	}
-	pass := passage{v: v, h: h, tri: tri, noise: noise, weak: !w.at[a].done || !w.at[b].done}
+	pass := passage{v: v, h: h, tri: tri, noise: noise, near: min(da, db), weak: !w.at[a].done || !w.at[b].done}
 	if pass.weak {
 		if knowsA {
 			w.offer(best, pass, ra, ra)
@@ -445,6 +445,7 @@ type passage struct {
 	v, h  int32
 	tri   triangle
 	noise float64
+	near  float64 // distance of the nearer end of the edge
 	weak  bool    // one end of the edge is not known yet
 	doubt float64 // what a value on the word of one end may be off by
 }
@@ -471,8 +472,8 @@ func (w *front) offer(best *arrival, p passage, r, s ray) {
 		value = share*value + (1-share)*other
 		kappa = share*kappa + (1-share)*otherKappa
 	}
-	if value >= best.d && !best.weak || min(r.d, s.d) >= value {
-		return // what is farther than v may have its front from v
+	if value >= best.d && !best.weak || p.near >= value {
+		return // an edge farther than v may have its front from v
 	}
 	from := r.from
 	if s.from.corner >= 0 && x > p.tri.length/2 {

@@ -103,6 +103,8 @@ func (l *legaliser) run() {
 // split puts a vertex on the edge of h and has all edges around it looked at.
 func (l *legaliser) split(h int32, at float64) {
 	s := l.s
+	e := s.Length[h]
+	at = min(max(at, 1e-3*e), 0.999*e) // a needle would only beget more
 	grown := int32(len(s.Vert))
 	s.splitEdge(h, at)
 	around := func(f int32) {
@@ -207,7 +209,6 @@ func (s *Surface) before(h int32) int32 {
 // at its halfedge's tail; the other part becomes a new face.
 func (s *Surface) splitEdge(h int32, at float64) int32 {
 	e := s.Length[h]
-	at = min(max(at, 1e-3*e), 0.999*e)
 	tail, head := s.Vert[h], s.head(h)
 	m := s.addVertex()
 	t := at / e
