@@ -5,6 +5,7 @@ import (
 	"context"
 	"fmt"
 	"io"
+	"maps"
 	"path/filepath"
 	"slices"
 	"strings"
@@ -21,6 +22,8 @@ type outputFlags struct {
 	probe    string
 	probeOut string
 	summary  string
+	kinds    []string // extensions that --out takes
+	history  string   // probes over time, for a command that has times
 	tables   []string // further CSV files that the command's own flags name
 
 	points *probes // what --probe holds, once read
@@ -34,6 +37,10 @@ type result struct {
 	fields []fieldfile.Column // by vertex
 	probed []fieldfile.Column // fields at the probes, if they are not the linear ones
 	tables []table
+
+	// standard writes what standard output gets, for a command with a table of its
+	// own; nil: the fields, unless --out takes them.
+	standard func(io.Writer) error
 }
 
 // A table is a further file of a command.
@@ -53,20 +60,17 @@ func writeCSV(w io.Writer, m *mesh.Mesh, fields []fieldfile.Column) error {
 	return fieldfile.WriteCSV(w, m, m.NumVertices(), fields)
 }
 
-func extensions() string {
-	list := make([]string, 0, len(fieldFormats))
-	for ext := range fieldFormats {
-		list = append(list, ext)
-	}
-	slices.Sort(list)
-	return strings.Join(list, ", ")
-}
-
 func (o *outputFlags) register(flags *pflag.FlagSet) {
-	flags.StringArrayVar(&o.out, "out", nil, "write the field to `FILE`, "+extensions()+" (repeatable); without it, CSV goes to standard output")
+	o.registerOut(flags, slices.Sorted(maps.Keys(fieldFormats)), "write the field to `FILE`, %s (repeatable); without it, CSV goes to standard output")
 	flags.StringVar(&o.probe, "probe", "", "places to read the field at: `FILE.csv`, columns id,x,y,z")
 	flags.StringVar(&o.probeOut, "probe-out", "", "the field at the probes, as `FILE.csv`")
 	o.registerSummary(flags)
+}
+
+// registerOut adds --out alone, for files of some kinds.
+func (o *outputFlags) registerOut(flags *pflag.FlagSet, kinds []string, usage string) {
+	o.kinds = kinds
+	flags.StringArrayVar(&o.out, "out", nil, fmt.Sprintf(usage, strings.Join(kinds, ", ")))
 }
 
 // registerSummary adds --summary alone, for a command without a field.
@@ -79,15 +83,18 @@ func (o *outputFlags) registerSummary(flags *pflag.FlagSet) {
 // that is not there, one of the inputs. It also reads the probes.
 func (o *outputFlags) prepare(inputs ...string) error {
 	for _, name := range o.out {
-		if ext := strings.ToLower(filepath.Ext(name)); fieldFormats[ext] == nil {
-			return usagef("--out %s: want a name that ends in one of %s", name, extensions())
+		if !slices.Contains(o.kinds, extension(name)) {
+			return usagef("--out %s: want a name that ends in one of %s", name, strings.Join(o.kinds, ", "))
 		}
 	}
-	if (o.probe == "") != (o.probeOut == "") {
+	if o.history != "" && o.probe == "" {
+		return usagef("--history %s: want --probe FILE.csv too, which names the places", o.history)
+	}
+	if (o.probe == "") != (o.probeOut == "" && o.history == "") {
 		return usagef("--probe FILE.csv and --probe-out FILE.csv go together: one names the places, the other takes the values")
 	}
-	for _, name := range append([]string{o.probeOut}, o.tables...) {
-		if name != "" && strings.ToLower(filepath.Ext(name)) != ".csv" {
+	for _, name := range append([]string{o.probeOut, o.history}, o.tables...) {
+		if name != "" && extension(name) != ".csv" {
 			return usagef("%s: this table is written as CSV, want a name that ends in .csv", name)
 		}
 	}
@@ -121,13 +128,16 @@ func (o *outputFlags) prepare(inputs ...string) error {
 // files are all files to be written.
 func (o *outputFlags) files() []string {
 	list := slices.Clone(o.out)
-	for _, name := range append([]string{o.probeOut, o.summary}, o.tables...) {
+	for _, name := range append([]string{o.probeOut, o.history, o.summary}, o.tables...) {
 		if name != "" {
 			list = append(list, name)
 		}
 	}
 	return list
 }
+
+// extension is that of a file's name, in lower case.
+func extension(name string) string { return strings.ToLower(filepath.Ext(name)) }
 
 func absolute(name string) string {
 	if full, err := filepath.Abs(name); err == nil {
@@ -147,20 +157,25 @@ func (o *outputFlags) save(ctx context.Context, j *job, r *result) error {
 
 	var pending []table
 	for _, name := range o.out {
-		write := fieldFormats[strings.ToLower(filepath.Ext(name))]
+		write := fieldFormats[extension(name)]
 		pending = append(pending, table{name, func(w io.Writer) error { return write(w, r.shown, fields) }})
 	}
 	if o.points != nil {
 		o.points.read(r)
-		pending = append(pending, table{o.probeOut, o.points.write})
+		if o.probeOut != "" {
+			pending = append(pending, table{o.probeOut, o.points.write})
+		}
 		j.noteProbes(o.points)
 	}
 	pending = append(pending, r.tables...)
 	if err := j.saveFiles(ctx, pending); err != nil {
 		return err
 	}
-	if len(o.out) == 0 {
-		if err := j.print(func(w io.Writer) error { return writeCSV(w, r.shown, fields) }); err != nil {
+	if r.standard == nil && len(o.out) == 0 {
+		r.standard = func(w io.Writer) error { return writeCSV(w, r.shown, fields) }
+	}
+	if r.standard != nil {
+		if err := j.print(r.standard); err != nil {
 			return err
 		}
 	}

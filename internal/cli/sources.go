@@ -61,8 +61,12 @@ func (s *sourceFlags) want(command string) error {
 	if len(s.asked) > 0 {
 		return nil
 	}
-	return usagef("%s: want a source: --%[2]s-vertex N, --%[2]s-point X,Y,Z, --%[2]s-file FILE.csv, --%[2]s-boundary K or --%[2]s-crease DEGREES",
-		command, s.word)
+	what := "source"
+	if s.word == "to" {
+		what = "target"
+	}
+	return usagef("%s: want a %[3]s: --%[2]s-vertex N, --%[2]s-point X,Y,Z, --%[2]s-file FILE.csv, --%[2]s-boundary K or --%[2]s-crease DEGREES",
+		command, s.word, what)
 }
 
 // place finds every source on part, which is original or a refinement of it.
@@ -76,8 +80,12 @@ func (s *sourceFlags) place(ctx context.Context, j *job, original, part *mesh.Me
 		}
 		data = append(data, found...)
 	}
+	list := &j.summary.Sources
+	if s.word == "to" {
+		list = &j.summary.Targets
+	}
 	for _, d := range data {
-		j.summary.Sources = append(j.summary.Sources, sourceSummary{d.Name, number(d.Gap)})
+		*list = append(*list, sourceSummary{d.Name, number(d.Gap)})
 		if d.Gap > 1e-7*reach(part) { // single precision may move a point by that much
 			j.note("%s lies %s off the surface", d.Name, unit.length(d.Gap))
 		}

@@ -17,6 +17,7 @@ type summary struct {
 	Options         map[string]string `json:"options"` // flags with the values in force
 	Mesh            *meshSummary      `json:"mesh,omitempty"`
 	Sources         []sourceSummary   `json:"sources,omitempty"`
+	Targets         []sourceSummary   `json:"targets,omitempty"`
 	Stages          []stage           `json:"stages"`
 	PeakMemoryBytes int64             `json:"peak_memory_bytes"`
 	Warnings        []string          `json:"warnings"`
@@ -27,6 +28,7 @@ type summary struct {
 
 	*distanceSummary
 	*kernelSummary
+	*pathSummary
 	Check *mesh.Report `json:"check,omitempty"`
 }
 
