@@ -3,12 +3,10 @@ package cli
 import (
 	"fmt"
 	"math"
-	"strconv"
 
 	"github.com/spf13/cobra"
 
-	"heatskin/internal/fieldfile"
-	"heatskin/kernel"
+	"heatskin/mesh"
 )
 
 // distanceSummary is what the summary says of distances. Errors are relative.
@@ -37,10 +35,8 @@ func newDistance(j *job) *cobra.Command {
 		refine refineFlags
 		source sourceFlags
 		output outputFlags
-		method string
-		each   bool
-		matrix string
-		opts   kernel.DistanceOptions
+		target errorTarget
+		ask    distanceQuestion
 	)
 	cmd := &cobra.Command{
 		Use:   "distance MESH SOURCE...",
@@ -49,32 +45,38 @@ func newDistance(j *job) *cobra.Command {
 
 The datum is one source or several: the distance is that to the nearest of them. It is
 measured along the triangles, whatever their shape. A vertex that no source can be reached
-from has the distance inf.`,
+from has the distance inf.
+
+The estimated error is that of the method against shortest paths over the flat triangles.
+The chord error is another matter: how far distances on the flat triangles are from those
+on the curved part that they may stand for. No refinement lowers that one.`,
 		Example: `  heatskin distance cap.stl --at-boundary 1 --out creep.ply --out creep.csv
   heatskin distance cap.stl --at-point 40,0,53 --probe sensors.csv --probe-out readings.csv --out field.csv
   heatskin distance cap.stl --at-vertex 12 --method exact > exact.csv
+  heatskin distance cap.stl --at-vertex 12 --target-error 0.05% --out sure.csv
   heatskin distance cap.stl --at-file pins.csv --matrix between-pins.csv --each --out pins.ply
   zcat part.ply.gz | heatskin distance - --format ply --at-crease 60 > to-edges.csv`,
 		Args: oneMesh,
 	}
 	flags := cmd.Flags()
 	source.register(flags, "at")
-	oneOfVar(flags, &method, "method", methodHeat, []string{methodHeat, methodExact},
+	oneOfVar(flags, &ask.method, "method", methodHeat, []string{methodHeat, methodExact},
 		"`heat|exact`: fast, or shortest paths over the flat triangles without any discretisation error")
-	flags.BoolVar(&opts.Smooth, "smooth", false, "heat: a field without kinks where fronts meet; less accurate")
-	opts.Smoothing = 1
+	flags.BoolVar(&ask.options.Smooth, "smooth", false, "heat: a field without kinks where fronts meet; less accurate")
+	ask.options.Smoothing = 1
 	varFunc(flags, "smoothing", "1", "heat: scale the time of the heat solve by `F`", func(text string) error {
 		x, err := positive(text)
 		if err == nil && x > mostSmoothing {
 			err = fmt.Errorf("want a number above 0, and at most %d", int(mostSmoothing))
 		}
 		if err == nil {
-			opts.Smoothing = x
+			ask.options.Smoothing = x
 		}
 		return err
 	})
-	flags.BoolVar(&each, "each", false, "one column for each source (distance_0, distance_1...) in place of their union")
-	flags.StringVar(&matrix, "matrix", "", "distances between all sources, as `FILE.csv` with the columns from,to,distance")
+	target.register(flags)
+	flags.BoolVar(&ask.each, "each", false, "one column for each source (distance_0, distance_1...) in place of their union")
+	flags.StringVar(&ask.matrix, "matrix", "", "distances between all sources, as `FILE.csv` with the columns from,to,distance")
 	output.register(flags)
 	input.register(flags)
 	refine.register(flags)
@@ -84,11 +86,14 @@ from has the distance inf.`,
 		if err := source.want("distance"); err != nil {
 			return err
 		}
-		if method == methodExact && (flags.Changed("smooth") || flags.Changed("smoothing")) {
+		if ask.method == methodExact && (flags.Changed("smooth") || flags.Changed("smoothing")) {
 			return usagef("--smooth and --smoothing belong to --method heat")
 		}
-		if matrix != "" {
-			output.tables = append(output.tables, matrix)
+		if target.mean > 0 && math.IsInf(refine.maxEdge, 1) {
+			return usagef("--target-error refines where --max-edge none forbids it; leave one of them out")
+		}
+		if ask.matrix != "" {
+			output.tables = append(output.tables, ask.matrix)
 		}
 		if err := output.prepare(append(source.files, args[0])...); err != nil {
 			return err
@@ -98,78 +103,47 @@ from has the distance inf.`,
 			return err
 		}
 		content := resolution(evenly)
-		if method == methodExact {
+		if ask.method == methodExact {
 			content = nil // its results do not depend on how flat faces are cut
 		}
 		g, err := prepare(ctx, j, part, &input, &refine, &source, content)
 		if err != nil {
 			return err
 		}
-		var measure ruler
-		if method == methodExact {
-			measure = newExactRuler(j, g)
-		} else if measure, err = newHeatRuler(ctx, j, g, opts); err != nil {
+		ask.probes, ask.keep = output.points, refine.keep
+		got, err := ask.answer(ctx, j, g)
+		if err != nil {
 			return err
 		}
-
-		columns := []string{"distance"}
-		sources := [][]int{nil}
-		if each {
-			columns, sources = nil, nil
-			for i := range g.data {
-				columns = append(columns, "distance_"+strconv.Itoa(i))
-				sources = append(sources, []int{i})
-			}
-		}
-		found := g.result(refine.keep)
-		for i, name := range columns {
-			values, err := measure.field(ctx, sources[i])
-			if err != nil {
+		var missed error
+		if target.mean > 0 {
+			if got, missed, err = target.pursue(ctx, j, g, got, &input, &source, &ask); err != nil {
 				return err
 			}
-			found.fields = append(found.fields, fieldfile.Column{Name: name, Values: values})
-		}
-		if output.points != nil {
-			places := output.points.on(g.part)
-			for i, name := range columns {
-				values, err := measure.at(ctx, sources[i], places)
-				if err != nil {
-					return err
-				}
-				if values != nil {
-					found.probed = append(found.probed, fieldfile.Column{Name: name, Values: values})
-				}
-			}
-		}
-		if matrix != "" {
-			between, err := measureMatrix(ctx, measure, len(g.data))
-			if err != nil {
-				return err
-			}
-			found.tables = append(found.tables, table{matrix, between.write})
 		}
 
-		j.summary.distanceSummary = summarizeDistance(method, found)
-		if heat, ok := measure.(*heatRuler); ok {
-			j.summary.Solves = heat.solves
-		}
+		j.clock.enter("chords")
+		j.summary.distanceSummary = summarizeDistance(ask.method, got, mesh.ChordError(part))
+		j.summary.Solves = got.solves
 		if far := float64(j.summary.LargestDistance); !math.IsNaN(far) {
-			j.note("largest distance %s, %d of %d vertices reached", input.length(far), j.summary.Reached, found.shown.NumVertices())
+			j.note("largest distance %s, %d of %d vertices reached", input.length(far), j.summary.Reached, got.shown.NumVertices())
+			j.note("%s", j.summary.accuracy())
 		}
-		return output.save(ctx, j, found)
+		if err := output.save(ctx, j, &got.result); err != nil {
+			return err
+		}
+		return missed
 	}
 	return cmd
 }
 
 // summarizeDistance looks at the rows that are shown.
-func summarizeDistance(method string, found *result) *distanceSummary {
-	nan := number(math.NaN())
+func summarizeDistance(method string, found *distanceAnswer, chords float64) *distanceSummary {
 	s := &distanceSummary{
 		Method:             method,
-		EstimatedMeanError: nan, EstimatedMaxError: nan, ChordError: nan, LargestDistance: nan,
-	}
-	if method == methodExact {
-		s.EstimatedMeanError, s.EstimatedMaxError = 0, 0
+		EstimatedMeanError: number(found.mean), EstimatedMaxError: number(found.most),
+		ChordError:      number(chords),
+		LargestDistance: number(math.NaN()),
 	}
 	rows := found.shown.NumVertices()
 	reached := make([]bool, rows)
@@ -189,4 +163,14 @@ func summarizeDistance(method string, found *result) *distanceSummary {
 		}
 	}
 	return s
+}
+
+// accuracy keeps two facts apart that are easily mixed up.
+func (s *distanceSummary) accuracy() string {
+	method := "no error on the flat triangles but rounding"
+	if s.Method != methodExact {
+		method = fmt.Sprintf("estimated error on the flat triangles: %s in the mean, %s at most",
+			percent(float64(s.EstimatedMeanError)), percent(float64(s.EstimatedMaxError)))
+	}
+	return fmt.Sprintf("%s; the triangles against a curved part they may stand for (chord error): %s", method, percent(float64(s.ChordError)))
 }

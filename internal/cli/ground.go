@@ -26,6 +26,7 @@ const (
 // and for what needs it the heat solver.
 type ground struct {
 	original, part *mesh.Mesh
+	edge           float64 // the longest edge allowed on part
 	data           []mesh.Datum
 	surface        *mesh.Surface
 	solver         *kernel.Solver // after makeSolver
@@ -74,36 +75,50 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 // refine cuts faces that are too large. What was not asked for is done as far as the
 // budget goes: slivers may need more vertices than their area tells.
 func (g *ground) refine(ctx context.Context, j *job, input *meshFlags, refine *refineFlags, content resolution) error {
+	longest := slices.Max(g.surface.Length)
 	edge, budget := refine.maxEdge, refineBudget
-	if edge == 0 {
-		if content == nil {
-			return nil
-		}
+	switch {
+	case edge == 0 && content == nil:
+		edge = longest
+	case edge == 0:
 		edge, budget = content(g.surface), autoBudget
 	}
-	longest := slices.Max(g.surface.Length)
-	if longest <= edge {
-		return nil
-	}
-	j.clock.enter("refine")
-	part, err := mesh.Refine(ctx, g.original, edge, budget)
-	var tooMuch *mesh.BudgetError
-	for refine.maxEdge == 0 && errors.As(err, &tooMuch) {
-		if edge *= 2; edge >= longest {
-			return nil
+	for g.edge = min(edge, longest); g.edge < longest; g.edge *= 2 {
+		err := g.cut(ctx, j, input, budget)
+		var tooMuch *mesh.BudgetError
+		if refine.maxEdge == 0 && errors.As(err, &tooMuch) {
+			continue
 		}
-		part, err = mesh.Refine(ctx, g.original, edge, budget)
-	}
-	if err != nil {
-		return refuse(err)
-	}
-	g.part = part
-	j.summary.Mesh.ComputedVertices, j.summary.Mesh.ComputedFaces = part.NumVertices(), part.NumTriangles()
-	j.note("computed on faces cut to edges of at most %s: %d vertices in place of %d", input.length(edge), part.NumVertices(), g.original.NumVertices())
-	if g.surface, err = mesh.NewSurface(part); err != nil {
 		return refuse(err)
 	}
 	return nil
+}
+
+// cut has the faces of the original cut until no edge is longer than g.edge.
+func (g *ground) cut(ctx context.Context, j *job, input *meshFlags, budget int) error {
+	j.clock.enter("refine")
+	part, err := mesh.Refine(ctx, g.original, g.edge, budget)
+	if err != nil {
+		return err
+	}
+	g.part = part
+	j.summary.Mesh.ComputedVertices, j.summary.Mesh.ComputedFaces = part.NumVertices(), part.NumTriangles()
+	j.note("computed on faces cut to edges of at most %s: %d vertices in place of %d", input.length(g.edge), part.NumVertices(), g.original.NumVertices())
+	g.surface, err = mesh.NewSurface(part)
+	return err
+}
+
+// finer is the ground with its faces cut to edges of at most edge. The error is a
+// *mesh.BudgetError if that takes more than budget vertices.
+func (g *ground) finer(ctx context.Context, j *job, input *meshFlags, source *sourceFlags, edge float64, budget int) (*ground, error) {
+	f := &ground{original: g.original, part: g.original, edge: edge}
+	if err := f.cut(ctx, j, input, budget-g.original.NumVertices()); err != nil {
+		return nil, err
+	}
+	j.clock.enter("place")
+	var err error
+	f.data, err = source.find(ctx, f.original, f.part)
+	return f, err
 }
 
 // makeSolver puts the sources into the surface's triangulation and prepares to solve

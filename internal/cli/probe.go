@@ -20,7 +20,8 @@ type probes struct {
 	table  *fieldfile.Table
 	ids    []string
 	points [][3]float64
-	places []mesh.Datum // the surface points nearest to them, once found
+	part   *mesh.Mesh   // the last mesh that they were sought on
+	places []mesh.Datum // the surface points nearest to them there
 	fields []fieldfile.Column
 }
 
@@ -79,8 +80,9 @@ func pointsOf(t *fieldfile.Table) ([][3]float64, error) {
 
 // on finds the surface points nearest to the probes.
 func (p *probes) on(part *mesh.Mesh) []mesh.Datum {
-	if p.places == nil {
+	if p.part != part {
 		find := &placer{part: part}
+		p.part, p.places = part, nil
 		for i, x := range p.points {
 			p.places = append(p.places, find.nearest(x, "probe "+p.ids[i]))
 		}

@@ -26,15 +26,15 @@ type ruler interface {
 type heatRuler struct {
 	*ground
 	options kernel.DistanceOptions
-	single  [][]float64 // field of each source, once asked for
-	solves  int
+	single  [][]float64     // field of each source, once asked for
+	account *distanceAnswer // where errors and solves are noted
 }
 
-func newHeatRuler(ctx context.Context, j *job, g *ground, opt kernel.DistanceOptions) (*heatRuler, error) {
+func newHeatRuler(ctx context.Context, j *job, g *ground, opt kernel.DistanceOptions, account *distanceAnswer) (*heatRuler, error) {
 	if err := g.makeSolver(ctx, j); err != nil {
 		return nil, err
 	}
-	return &heatRuler{ground: g, options: opt, single: make([][]float64, len(g.data))}, nil
+	return &heatRuler{ground: g, options: opt, single: make([][]float64, len(g.data)), account: account}, nil
 }
 
 func (r *heatRuler) field(ctx context.Context, which []int) ([]float64, error) {
@@ -48,7 +48,9 @@ func (r *heatRuler) field(ctx context.Context, which []int) ([]float64, error) {
 	if err != nil {
 		return nil, sorted(err)
 	}
-	r.solves += found.Solves
+	r.account.solves += found.Solves
+	r.account.mean = max(r.account.mean, found.MeanError)
+	r.account.most = max(r.account.most, found.MaxError)
 	if len(which) == 1 {
 		r.single[which[0]] = found.Distance
 	}

@@ -69,17 +69,9 @@ func (s *sourceFlags) want(command string) error {
 		command, s.word, what)
 }
 
-// place finds every source on part, which is original or a refinement of it.
+// place finds every source on part and tells how far off it lies.
 func (s *sourceFlags) place(ctx context.Context, j *job, original, part *mesh.Mesh, unit *meshFlags) ([]mesh.Datum, error) {
-	p := &placer{original: original, part: part}
-	var data []mesh.Datum
-	for _, find := range s.asked {
-		found, err := find(ctx, p)
-		if err != nil {
-			return nil, refuse(err)
-		}
-		data = append(data, found...)
-	}
+	data, err := s.find(ctx, original, part)
 	list := &j.summary.Sources
 	if s.word == "to" {
 		list = &j.summary.Targets
@@ -89,6 +81,19 @@ func (s *sourceFlags) place(ctx context.Context, j *job, original, part *mesh.Me
 		if d.Gap > 1e-7*reach(part) { // single precision may move a point by that much
 			j.note("%s lies %s off the surface", d.Name, unit.length(d.Gap))
 		}
+	}
+	return data, err
+}
+
+// find finds every source on part, which is original or a refinement of it.
+func (s *sourceFlags) find(ctx context.Context, original, part *mesh.Mesh) (data []mesh.Datum, err error) {
+	p := &placer{original: original, part: part}
+	for _, find := range s.asked {
+		found, err := find(ctx, p)
+		if err != nil {
+			return nil, refuse(err)
+		}
+		data = append(data, found...)
 	}
 	return data, nil
 }
@@ -137,10 +142,13 @@ func atFile(name string) (asked, error) {
 	if name == "" {
 		return nil, errors.New("want the name of a CSV file with columns x,y,z")
 	}
+	var points [][3]float64 // read once: the file may be a pipe
 	return func(_ context.Context, p *placer) ([]mesh.Datum, error) {
-		points, err := readPoints(name)
-		if err != nil {
-			return nil, err
+		if points == nil {
+			var err error
+			if points, err = readPoints(name); err != nil {
+				return nil, err
+			}
 		}
 		data := make([]mesh.Datum, len(points))
 		for i, x := range points {
