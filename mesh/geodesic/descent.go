@@ -86,7 +86,7 @@ func (t *tracer) atFoot(h int32, w *window, x, y float64) stance {
 // arrived tells whether the line stands at its source.
 func (t *tracer) arrived(s *stance) bool {
 	if s.h < 0 {
-		d, ok := t.ends[s.vertex]
+		d, ok := t.sourceVertices[s.vertex]
 		t.source = int(d)
 		return ok
 	}

@@ -2,6 +2,7 @@ package geodesic
 
 import (
 	"context"
+	"errors"
 	"math"
 
 	"heatskin/mesh"
@@ -33,38 +34,42 @@ func Path(ctx context.Context, m *mesh.Mesh, from, to []mesh.Datum) (*Line, erro
 // heeds Radius and MaxBytes. Errors are those of Spread, and a *TraceError.
 func (s *Solver) Path(ctx context.Context, from, to []mesh.Datum, opt Options) (*Line, error) {
 	opt = Options{Targets: to, Any: true, Radius: opt.Radius, MaxBytes: opt.MaxBytes}
-	for {
-		v, err := s.start(from, opt, true)
-		if err != nil {
-			return nil, err
-		}
-		if err := v.run(ctx); err != nil {
-			return nil, err
-		}
-		best, several := v.choose()
-		if math.IsInf(best.distance, 1) || best.distance > v.radius {
-			return nil, nil
-		}
-		t := tracer{wave: v, total: best.distance, several: several}
-		follow := t.trace
-		if opt.Keep {
-			follow = t.descend
-		}
-		err = &TraceError{Distance: best.distance}
-		if follow(&best) {
-			line := t.line()
-			line.From, line.To = t.source, best.target
-			n := len(line.S)
-			if math.Abs(line.S[n-1]-line.Length) <= 1e-9*line.Length {
-				return line, nil
-			}
-			err = &TraceError{Distance: line.Length, Length: line.S[n-1]}
-		}
-		if opt.Keep {
-			return nil, err
-		}
+	line, err := s.path(ctx, from, opt)
+	if astray := (*TraceError)(nil); errors.As(err, &astray) {
 		opt.Keep = true
+		line, err = s.path(ctx, from, opt)
 	}
+	return line, err
+}
+
+// path is Path, by the straight line or, with opt.Keep, by the windows.
+func (s *Solver) path(ctx context.Context, from []mesh.Datum, opt Options) (*Line, error) {
+	v, err := s.start(from, opt, true)
+	if err != nil {
+		return nil, err
+	}
+	defer s.giveTables(v.tables)
+	if err := v.run(ctx); err != nil {
+		return nil, err
+	}
+	best, several := v.choose()
+	if math.IsInf(best.distance, 1) || best.distance > v.radius {
+		return nil, nil
+	}
+	t := tracer{wave: v, total: best.distance, several: several}
+	follow := t.trace
+	if opt.Keep {
+		follow = t.descend
+	}
+	if !follow(&best) {
+		return nil, &TraceError{Distance: best.distance}
+	}
+	line := t.line()
+	line.From, line.To = t.source, best.target
+	if n := len(line.S); math.Abs(line.S[n-1]-line.Length) > 1e-9*line.Length {
+		return nil, &TraceError{Distance: line.Length, Length: line.S[n-1]}
+	}
+	return line, nil
 }
 
 // An arrival is one way to come to a target.

@@ -14,7 +14,7 @@ type parent struct {
 // throughWindow offers the apex of h's triangle the straight way through w.
 func (v *wave) throughWindow(h int32, l *layout, w *window) {
 	d := w.to(l.x, l.y)
-	if v.parents == nil {
+	if !v.lines {
 		v.lower(l.c, d)
 	} else {
 		v.offer(l.c, d, parent{h: h, from: -1, window: *w})
@@ -23,7 +23,7 @@ func (v *wave) throughWindow(h int32, l *layout, w *window) {
 
 // fromCorner offers b the distance d by way of the edge from a.
 func (v *wave) fromCorner(a, b int32, d float64) {
-	if v.parents == nil {
+	if !v.lines {
 		v.lower(b, d)
 	} else {
 		v.offer(b, d, parent{h: -1, from: a})

@@ -2,13 +2,13 @@ package geodesic
 
 import (
 	"math"
+	"sync"
 
 	"heatskin/mesh"
 )
 
 // A Solver answers questions about distance on one mesh. It keeps the mesh and, per
-// triangle, 24 bytes of adjacency; it is not changed by use and serves several
-// goroutines at once.
+// triangle, 24 bytes of adjacency; it serves several goroutines at once.
 type Solver struct {
 	mesh *mesh.Mesh
 	glue []int32 // as mesh.Glue: the next halfedge around the same edge
@@ -17,6 +17,8 @@ type Solver struct {
 	first  []int32 // length NumVertices+1
 	corner []int32
 	extent float64 // largest side of the box around the mesh
+
+	used sync.Pool // of *tables
 }
 
 // NewSolver prepares m, which must not change after, in O(n+m).

@@ -59,6 +59,8 @@ func (s *Solver) place(d mesh.Datum) (place, error) {
 		return nil
 	}
 	switch {
+	case d.Edges != nil && len(d.Edges) == 0:
+		return none, &DatumError{d.Name, "at least one edge", "none"}
 	case d.Edges != nil:
 		p := none
 		for _, e := range d.Edges {
@@ -133,10 +135,11 @@ func (v *wave) sourceVertex(vertex, datum int32) {
 	}
 	v.distance[vertex] = 0
 	v.sends[vertex] = sendsOn
+	v.touchVertex(vertex)
 	v.events.push(event{0, int32(len(v.waits)) + vertex})
-	if v.parents != nil {
+	if v.lines {
 		v.parents[vertex] = parent{h: -1, from: -1}
-		v.ends[vertex] = datum
+		v.sourceVertices[vertex] = datum
 	}
 }
 
@@ -150,7 +153,7 @@ func (v *wave) sourcePoint(t int32, weights [3]float64, datum int32) {
 		}
 		x, y := l.point(h, weights)
 		w := window{b1: l.length, x: x, y: -y}
-		if d := w.to(l.x, l.y); v.lower(l.c, d) && v.parents != nil {
+		if d := w.to(l.x, l.y); v.lower(l.c, d) && v.lines {
 			v.parents[l.c] = parent{h: h, from: -1, window: w}
 		}
 	}
@@ -187,8 +190,8 @@ func (v *wave) sourceEdge(h int32, datum int32) {
 			v.waits[p] = 0
 			v.events.push(event{0, p})
 		}
-		if v.lines != nil {
-			v.lines[p] = datum
+		if v.lines {
+			v.sourceHalfedges[p] = datum
 		}
 		if p = v.glue[p]; p == h {
 			return

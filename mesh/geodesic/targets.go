@@ -88,7 +88,7 @@ func (v *wave) done() bool {
 			t.stop = max(t.stop, d)
 		}
 	}
-	if v.parents != nil {
+	if v.lines {
 		t.stop *= 1 + 2*equally // see those that are equally short
 	}
 	return v.now > t.stop
@@ -189,7 +189,7 @@ func (v *wave) hitEdge(g *gate, w *window) {
 func (v *wave) note(t *target, h hit) {
 	if h.distance < t.best {
 		t.best = h.distance
-		if v.parents != nil {
+		if v.lines {
 			kept := t.hits[:0]
 			for _, old := range t.hits {
 				if old.distance <= t.best*(1+equally) {
@@ -198,7 +198,7 @@ func (v *wave) note(t *target, h hit) {
 			}
 			t.hits = append(kept, h)
 		}
-	} else if v.parents != nil && h.distance <= t.best*(1+equally) {
+	} else if v.lines && h.distance <= t.best*(1+equally) {
 		t.hits = append(t.hits, h)
 	}
 }

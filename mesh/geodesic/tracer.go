@@ -62,7 +62,7 @@ func (t *tracer) fromVertex(vertex int32) bool {
 			t.add(t.position(p.from), t.along(vertex, p.from))
 			vertex = p.from
 		default:
-			t.source = int(t.ends[vertex])
+			t.source = int(t.sourceVertices[vertex])
 			return true
 		}
 	}
@@ -317,7 +317,7 @@ func (t *tracer) sourceIn(h int32, l *layout, x, y, eps float64) (datum int, ok 
 		{l.gateA, math.Abs(y*l.uax - x*l.uay)},
 		{l.gateB, math.Abs(y*l.ubx - (l.length-x)*l.uby)},
 	} {
-		if d, found := t.lines[e.h]; found && e.gap <= eps {
+		if d, found := t.sourceHalfedges[e.h]; found && e.gap <= eps {
 			return int(d), true
 		}
 		// A source point on the edge may be given in the triangle across.
