@@ -99,6 +99,9 @@ func (s *Solver) Diffuse(ctx context.Context, pr *Problem, times []float64, opt 
 	if err != nil {
 		return nil, err
 	}
+	for i, u := range r.Fields {
+		r.Fields[i] = s.outward(u)
+	}
 	for i, e := range r.ErrorEstimates {
 		if e > all.Tolerance {
 			r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: the error in time is estimated at %.2g of the largest value, above the tolerance %g", times[i], e, all.Tolerance))

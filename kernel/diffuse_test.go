@@ -94,7 +94,7 @@ func TestSteadyFins(t *testing.T) {
 				t.Fatal(err)
 			}
 			errs = append(errs, math.Abs(u[nearest(m, x, 0.125, 0)]-number(t, row, "theta_adiabatic_tip")))
-			efficiency = append(efficiency, math.Abs(s.heatOf(u)/0.25-number(t, row, "efficiency_adiabatic_tip")))
+			efficiency = append(efficiency, math.Abs(s.heatOf(s.inward(u))/0.25-number(t, row, "efficiency_adiabatic_tip")))
 		}
 		checkOrder(t, fmt.Sprintf("straight fin mL=%g x=%g", ml, x), errs, 1e-3)
 		checkOrder(t, fmt.Sprintf("straight fin mL=%g efficiency", ml), efficiency, 1e-3)
@@ -148,7 +148,8 @@ func TestAnnulusFlow(t *testing.T) {
 			t.Errorf("the steady field moves by %g", d)
 		}
 		lu, flow := make([]float64, len(steady)), 0.0
-		s.stiffness.MulVecTo(lu, steady)
+		s.stiffness.MulVecTo(lu, s.inward(steady))
+		lu = s.outward(lu)
 		for _, v := range rim(b) {
 			flow += lu[v]
 		}
@@ -355,7 +356,7 @@ func denseFlow(y *system, times []float64) [][]float64 {
 		for i, v := range free {
 			u[v] += faded[i] + given[i]
 		}
-		out[k] = u
+		out[k] = s.outward(u)
 	}
 	return out
 }

@@ -94,6 +94,7 @@ func (s *Solver) Distance(ctx context.Context, which []int, opt DistanceOptions)
 			res.Reached++
 		}
 	}
+	res.Distance = s.outward(res.Distance)
 	return res, nil
 }
 

@@ -84,7 +84,7 @@ func (s *Solver) HeatKernels(ctx context.Context, load []float64, times []float6
 			return nil, &TimeError{i, t}
 		}
 	}
-	flow, err := s.newFlow(load)
+	flow, err := s.newFlow(s.inward(load))
 	if err != nil {
 		return nil, err
 	}
@@ -122,6 +122,9 @@ func (s *Solver) HeatKernels(ctx context.Context, load []float64, times []float6
 	}
 	for i, t := range times {
 		flow.judge(i, t, opt)
+	}
+	for i, u := range flow.result.Fields {
+		flow.result.Fields[i] = s.outward(u)
 	}
 	return flow.result, nil
 }
@@ -170,10 +173,10 @@ func (s *Solver) newFlow(load []float64) (*flow, error) {
 		c := s.component[i]
 		switch {
 		case !(q >= 0) || math.IsInf(q, 0):
-			return nil, &LoadError{i, q, "want a finite amount, 0 or more"}
+			return nil, &LoadError{s.vertexOut(i), q, "want a finite amount, 0 or more"}
 		case q == 0:
 		case c < 0:
-			return nil, &LoadError{i, q, "the vertex is in no triangle of positive area; choose another"}
+			return nil, &LoadError{s.vertexOut(i), q, "the vertex is in no triangle of positive area; choose another"}
 		default:
 			f.heat[c] += q
 			f.total += q

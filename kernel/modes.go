@@ -44,8 +44,9 @@ func (s *Solver) Modes(ctx context.Context, count int, held []int32) (*ModesResu
 		if v < 0 || int(v) >= n {
 			return nil, &FieldError{"held", int(v), 0, fmt.Sprintf("a vertex from 0 to %d", n-1)}
 		}
-		hold[v] = true
-		if c := s.component[v]; c >= 0 {
+		i := s.vertexIn(v)
+		hold[i] = true
+		if c := s.component[i]; c >= 0 {
 			floating[c] = false
 		}
 	}
@@ -72,13 +73,15 @@ func (s *Solver) Modes(ctx context.Context, count int, held []int32) (*ModesResu
 		}
 	}
 	s.residuals(r, hold)
-	for _, x := range r.Fields {
+	for k, x := range r.Fields {
+		x = s.outward(x)
 		fixSign(x)
-		for v, c := range s.component {
+		for i, c := range s.component {
 			if c < 0 {
-				x[v] = math.NaN()
+				x[s.vertexOut(i)] = math.NaN()
 			}
 		}
+		r.Fields[k] = x
 	}
 	return r, nil
 }

@@ -65,16 +65,18 @@ func (s *Solver) Passage(ctx context.Context, targets [][]int32, diffusivity flo
 			return nil, &TargetError{k, -1, "it has no vertex"}
 		}
 		for _, v := range set {
-			switch {
-			case v < 0 || int(v) >= n:
+			if v < 0 || int(v) >= n {
 				return nil, &TargetError{k, int(v), fmt.Sprintf("want a vertex from 0 to %d", n-1)}
-			case s.component[v] < 0:
-				return nil, &TargetError{k, int(v), "it is in no triangle of positive area; choose another"}
-			case owner[v] >= 0 && owner[v] != int32(k):
-				return nil, &TargetError{k, int(v), fmt.Sprintf("it belongs to target %d too", owner[v])}
 			}
-			owner[v] = int32(k)
-			reached[s.component[v]] = true
+			i := s.vertexIn(v)
+			switch {
+			case s.component[i] < 0:
+				return nil, &TargetError{k, int(v), "it is in no triangle of positive area; choose another"}
+			case owner[i] >= 0 && owner[i] != int32(k):
+				return nil, &TargetError{k, int(v), fmt.Sprintf("it belongs to target %d too", owner[i])}
+			}
+			owner[i] = int32(k)
+			reached[s.component[i]] = true
 		}
 	}
 	held := make([]bool, n)
@@ -119,6 +121,10 @@ func (s *Solver) Passage(ctx context.Context, targets [][]int32, diffusivity flo
 		if err := s.reach(ctx, r, len(targets), owner, held, reached, solve); err != nil {
 			return nil, err
 		}
+	}
+	r.MeanTime = s.outward(r.MeanTime)
+	for k, p := range r.Reach {
+		r.Reach[k] = s.outward(p)
 	}
 	r.Residual, r.Solves = solve.worst, solve.solves
 	return r, nil

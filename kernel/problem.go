@@ -3,6 +3,7 @@ package kernel
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"heatskin/internal/sparse"
 )
@@ -33,9 +34,9 @@ type Exchange struct {
 // FaceExchange is the loss c·(u - ambient) per unit of time and area over the whole
 // surface, c in 1/time.
 func (s *Solver) FaceExchange(c, ambient float64) Exchange {
-	w := make([]float64, len(s.lumped))
-	for i, a := range s.lumped {
-		w[i] = c * a
+	w := s.Areas()
+	for i := range w {
+		w[i] *= c
 	}
 	return Exchange{Name: "faces", Weight: w, Ambient: ambient}
 }
@@ -69,7 +70,7 @@ func (s *Solver) Along(i int) []float64 {
 			w[head] += f.Length[h] / 2
 		}
 	}
-	return w
+	return s.outward(w)
 }
 
 // A FieldError is an entry of a Problem that no flow can start from.
@@ -114,6 +115,7 @@ func (s *Solver) newSystem(pr *Problem) (*system, error) {
 		return nil, &OptionError{"diffusivity", "a finite number above 0", fmt.Sprint(d)}
 	}
 	n := len(s.lumped)
+	pr = s.inwardProblem(pr)
 	y := &system{solver: s, problem: pr, d: d, loss: make([]float64, n), held: make([]bool, n), lift: make([]float64, n),
 		p: make([]float64, n), b: make([]float64, n), put: make([]float64, n), floating: make([]bool, len(s.area))}
 	if err := y.check(); err != nil {
@@ -183,42 +185,53 @@ func (y *system) start() {
 	y.begin += s.heatOf(u)
 }
 
+// inwardProblem is a problem in the Solver's own numbering.
+func (s *Solver) inwardProblem(pr *Problem) *Problem {
+	n := len(s.lumped)
+	own := *pr
+	for _, field := range []*[]float64{&own.Initial, &own.Load, &own.Rate, &own.Hold} {
+		if *field != nil && len(*field) != n {
+			panic("kernel: Problem: a slice has not one entry for each surface vertex")
+		}
+		*field = s.inward(*field)
+	}
+	own.Exchanges = slices.Clone(pr.Exchanges)
+	for k := range own.Exchanges {
+		weight := &own.Exchanges[k].Weight
+		if len(*weight) != n {
+			panic("kernel: Problem: an exchange has not one weight for each surface vertex")
+		}
+		*weight = s.inward(*weight)
+	}
+	return &own
+}
+
 func (y *system) check() error {
 	s, pr := y.solver, y.problem
-	n := len(s.lumped)
 	fields := []struct {
 		name   string
 		values []float64
 	}{{"initial", pr.Initial}, {"load", pr.Load}, {"rate", pr.Rate}, {"hold", pr.Hold}}
 	for _, f := range fields {
-		if f.values == nil {
-			continue
-		}
-		if len(f.values) != n {
-			panic("kernel: Problem: a slice has not one entry for each surface vertex")
-		}
 		for i, x := range f.values {
 			if f.name == "hold" && math.IsNaN(x) {
 				continue
 			}
 			if x-x != 0 && s.component[i] >= 0 {
-				return &FieldError{f.name, i, x, "a finite number"}
+				return &FieldError{f.name, s.vertexOut(i), x, "a finite number"}
 			}
 			if s.component[i] < 0 && (f.name == "load" || f.name == "rate") && x != 0 {
-				return &FieldError{f.name, i, x, "0: the vertex is in no triangle of positive area"}
+				return &FieldError{f.name, s.vertexOut(i), x, "0: the vertex is in no triangle of positive area"}
 			}
 		}
 	}
 	for _, e := range pr.Exchanges {
-		if len(e.Weight) != n {
-			panic("kernel: Problem: an exchange has not one weight for each surface vertex")
-		}
 		if e.Ambient-e.Ambient != 0 {
 			return &OptionError{e.Name + " exchange", "a finite ambient value", fmt.Sprint(e.Ambient)}
 		}
 		for i, w := range e.Weight {
 			if !(w >= 0) || math.IsInf(w, 0) {
-				return &FieldError{e.Name + " exchange", i, w, "a finite coefficient, 0 or more"}
+				return &FieldError{e.Name + " exchange", s.vertexOut(i), w, "a finite coefficient, 0 or more"}
 			}
 		}
 	}

@@ -4,6 +4,7 @@ import (
 	"context"
 	"math"
 	"runtime"
+	"slices"
 	"sync"
 
 	"heatskin/internal/sparse"
@@ -28,7 +29,8 @@ type Options struct {
 // 8 per entry of each factor (see Stats). A Solver may serve several goroutines at
 // once.
 type Solver struct {
-	surface    *mesh.Surface
+	numbering
+	surface    *mesh.Surface  // in the Solver's own numbering
 	stiffness  *sparse.Matrix // L
 	lumped     []float64      // area of each vertex, M·1
 	consistent *sparse.Matrix // M, or nil: then it is diagonal
@@ -55,16 +57,23 @@ type Stats struct {
 // been placed and the surface made Delaunay before; it must not be changed afterwards.
 // The error is ctx.Err(), an *OperatorError, or that of a surface too large to index.
 func NewSolver(ctx context.Context, s *mesh.Surface, opt Options) (*Solver, error) {
-	var consistent *sparse.Matrix
+	own, outer := s.Renumbered()
+	numbers := newNumbering(outer)
+	op := operators{numbering: numbers, stiffness: own.Laplacian(), lumped: own.LumpedMass(), component: make([]int32, len(outer))}
 	if opt.ConsistentMass {
-		consistent = s.ConsistentMass()
+		op.consistent = own.ConsistentMass()
 	}
-	component, count := s.Components()
-	return newSolver(ctx, s, operators{s.Laplacian(), s.LumpedMass(), consistent, component, count}, opt)
+	component, count := s.Components() // numbered as the surface's vertices come
+	for i, v := range outer {
+		op.component[i] = component[v]
+	}
+	op.count = count
+	return newSolver(ctx, own, op, opt)
 }
 
-// operators are what heat needs to know of a surface.
+// operators are what heat needs to know of a surface, in the numbering that they say.
 type operators struct {
+	numbering
 	stiffness  *sparse.Matrix
 	lumped     []float64
 	consistent *sparse.Matrix
@@ -80,7 +89,7 @@ func newSolver(ctx context.Context, s *mesh.Surface, op operators, opt Options) 
 		opt.Progress = func(string, float64) {}
 	}
 	v := &Solver{
-		surface: s, stiffness: op.stiffness, lumped: op.lumped, consistent: op.consistent,
+		numbering: op.numbering, surface: s, stiffness: op.stiffness, lumped: op.lumped, consistent: op.consistent,
 		component: op.component, area: make([]float64, op.count), options: opt,
 	}
 	for i, c := range v.component {
@@ -88,7 +97,7 @@ func newSolver(ctx context.Context, s *mesh.Surface, op operators, opt Options) 
 			continue
 		}
 		if a, w := v.lumped[i], v.stiffness.Diag[i]; !(a > 0) || a-a != 0 || w-w != 0 {
-			return nil, &OperatorError{i, a, w}
+			return nil, &OperatorError{v.vertexOut(i), a, w}
 		}
 		v.area[c] += v.lumped[i]
 	}
@@ -121,8 +130,8 @@ func (s *Solver) Stats() Stats {
 }
 
 // Areas are those of the vertices: a third of each triangle's goes to each of its
-// corners. Σ area·u is the area integral of a field u. The slice is the Solver's own.
-func (s *Solver) Areas() []float64 { return s.lumped }
+// corners. Σ area·u is the area integral of a field u.
+func (s *Solver) Areas() []float64 { return slices.Clone(s.outward(s.lumped)) }
 
 // massTo sets dst = M x.
 func (s *Solver) massTo(dst, x []float64) {

@@ -72,5 +72,5 @@ func (s *Solver) Steady(ctx context.Context, pr *Problem) (u []float64, solveErr
 			w[i] += y.lift[i]
 		}
 	}
-	return w, solveError, nil
+	return s.outward(w), solveError, nil
 }
