@@ -16,9 +16,10 @@ import (
 // sourceFlags are the places that distance is measured from or heat is put into:
 // --at-vertex --at-point --at-file --at-boundary --at-crease, in the order in which
 // they stand on the command line. A command that has another end registers a second
-// group under the word "to".
+// group under the word "to". Loops that something is done to are such a group, too:
+// "hold", "lose".
 type sourceFlags struct {
-	word  string // "at" or "to"
+	word  string // "at", "to", "hold" or "lose"
 	asked []asked
 	files []string // tables of points
 }
@@ -72,10 +73,7 @@ func (s *sourceFlags) want(command string) error {
 // place finds every source on part and tells how far off it lies.
 func (s *sourceFlags) place(ctx context.Context, j *job, original, part *mesh.Mesh, unit *meshFlags) ([]mesh.Datum, error) {
 	data, err := s.find(ctx, original, part)
-	list := &j.summary.Sources
-	if s.word == "to" {
-		list = &j.summary.Targets
-	}
+	list := j.summary.places(s.word)
 	for _, d := range data {
 		*list = append(*list, sourceSummary{d.Name, number(d.Gap)})
 		if d.Gap > 1e-7*reach(part) { // single precision may move a point by that much

@@ -18,6 +18,8 @@ type summary struct {
 	Mesh            *meshSummary      `json:"mesh,omitempty"`
 	Sources         []sourceSummary   `json:"sources,omitempty"`
 	Targets         []sourceSummary   `json:"targets,omitempty"`
+	Held            []sourceSummary   `json:"held,omitempty"`
+	Losing          []sourceSummary   `json:"losing,omitempty"`
 	Stages          []stage           `json:"stages"`
 	PeakMemoryBytes int64             `json:"peak_memory_bytes"`
 	Warnings        []string          `json:"warnings"`
@@ -29,6 +31,8 @@ type summary struct {
 	*distanceSummary
 	*kernelSummary
 	*pathSummary
+	*modesSummary
+	*passageSummary
 	Check *mesh.Report `json:"check,omitempty"`
 }
 
@@ -60,6 +64,19 @@ type matrixSummary struct {
 type sourceSummary struct {
 	Name string `json:"name"`
 	Gap  number `json:"gap"`
+}
+
+// places is the list for places of one word of the command line.
+func (s *summary) places(word string) *[]sourceSummary {
+	switch word {
+	case "to":
+		return &s.Targets
+	case "hold":
+		return &s.Held
+	case "lose":
+		return &s.Losing
+	}
+	return &s.Sources
 }
 
 // A number is null in JSON where it does not exist.
