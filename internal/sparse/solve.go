@@ -18,7 +18,7 @@ import (
 func (f *Factor) SolveTo(dst, b []float64) {
 	f.checkSolve(dst, b, 1)
 	v := f.a.getVectors(1)
-	scaling := f.load(v.x, 1, b)
+	scaling := f.load(v.x, b, 1)
 	f.a.upwards(v, func(ln *solveLane, s int32) { f.forward(v, ln, s) })
 	f.a.downwards(v, func(ln *solveLane, s int32) { f.backward(v, ln, s) })
 	f.store(dst, v.x, 1, scaling)
@@ -37,48 +37,70 @@ func (f *Factor) checkSolve(dst, b []float64, k int) {
 // chunk is how many rows one goroutine copies at a time.
 const chunk = 1 << 14
 
-// load sets x = 2^e S P b, x having the given stride, with e such that the largest value is near 2^400: values far
-// below it keep four fifths of the range of exponents, and solutions have room to be larger. It returns e.
-func (f *Factor) load(x []float64, stride int, b []float64) (e int) {
+// load sets x = 2^e S P b with e such that the largest value is near 2^400: values far below it keep four
+// fifths of the range of exponents, and solutions have room to be larger. b holds up to eight right sides, column by
+// column; x has eight values a row, or one if there is one right side. It returns e for each.
+func (f *Factor) load(x, b []float64, width int) (e [8]int) {
 	n := len(f.a.perm)
+	sides := len(b) / max(n, 1)
 	workers := f.a.plan.workers
 	chunks := (n + chunk - 1) / chunk
-	largest := make([]float64, chunks)
+	largest := make([][8]float64, chunks)
+	// In the caller's order: b is read in sequence, and a row of x written at once.
 	inParallel(workers, chunks, func(_, i int) {
-		top := 0.0
-		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
-			v := b[f.a.perm[k]] * f.scale[k]
-			x[k*stride] = v
-			top = max(top, math.Abs(v))
+		top := &largest[i]
+		for v := i * chunk; v < min((i+1)*chunk, n); v++ {
+			k := int(f.a.inverse[v])
+			scale := f.scale[k]
+			row := x[width*k:][:width]
+			for c := range row {
+				row[c] = 0
+				if c < sides {
+					row[c] = b[c*n+v] * scale
+					top[c] = max(top[c], math.Abs(row[c]))
+				}
+			}
 		}
-		largest[i] = top
 	})
-	top := 0.0
-	for _, v := range largest {
-		top = max(top, v)
+	var up1, up2 [8]float64 // 2^e may be out of range
+	for c := range sides {
+		top := 0.0
+		for i := range largest {
+			top = max(top, largest[i][c])
+		}
+		if top > 0 && top <= math.MaxFloat64 {
+			_, e[c] = math.Frexp(top)
+			e[c] = 400 - e[c]
+		}
+		up1[c], up2[c] = math.Ldexp(1, e[c]/2), math.Ldexp(1, e[c]-e[c]/2)
 	}
-	if !(top > 0) || top > math.MaxFloat64 {
-		return 0
-	}
-	_, e = math.Frexp(top)
-	e = 400 - e
-	up1, up2 := math.Ldexp(1, e/2), math.Ldexp(1, e-e/2) // 2^e may be out of range
 	inParallel(workers, chunks, func(_, i int) {
 		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
-			x[k*stride] *= up1
-			x[k*stride] *= up2
+			row := x[width*k:][:width]
+			for c := range row {
+				row[c] *= up1[c]
+				row[c] *= up2[c]
+			}
 		}
 	})
 	return e
 }
 
-// store sets dst = 2^-e Pᵀ S x.
-func (f *Factor) store(dst, x []float64, stride, e int) {
+// store sets dst = 2^-e Pᵀ S x, in the shapes of load.
+func (f *Factor) store(dst, x []float64, width int, e [8]int) {
 	n := len(f.a.perm)
-	down1, down2 := math.Ldexp(1, -(e/2)), math.Ldexp(1, -(e-e/2))
+	sides := len(dst) / max(n, 1)
+	var down1, down2 [8]float64
+	for c := range sides {
+		down1[c], down2[c] = math.Ldexp(1, -(e[c]/2)), math.Ldexp(1, -(e[c]-e[c]/2))
+	}
 	inParallel(f.a.plan.workers, (n+chunk-1)/chunk, func(_, i int) {
-		for k := i * chunk; k < min((i+1)*chunk, n); k++ {
-			dst[f.a.perm[k]] = x[k*stride] * f.scale[k] * down1 * down2
+		for v := i * chunk; v < min((i+1)*chunk, n); v++ {
+			k := int(f.a.inverse[v])
+			scale := f.scale[k]
+			for c, value := range x[width*k:][:sides] {
+				dst[c*n+v] = value * scale * down1[c] * down2[c]
+			}
 		}
 	})
 }

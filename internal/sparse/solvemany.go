@@ -18,21 +18,14 @@ func (f *Factor) SolveManyTo(dst, b []float64, k int) {
 		}
 		some := min(k, width)
 		v := f.a.getVectors(width)
-		var scaling [16]int
-		for c := range width {
-			x := v.x[c/8*8*n+c%8:]
-			if c < some {
-				scaling[c] = f.load(x, 8, b[c*n:c*n+n])
-				continue
-			}
-			for i := range n {
-				x[8*i] = 0
-			}
+		var scaling [2][8]int
+		for g := range width / 8 {
+			scaling[g] = f.load(v.x[8*g*n:8*(g+1)*n], b[8*g*n:min(8*(g+1), some)*n], 8)
 		}
 		f.a.upwards(v, func(ln *solveLane, s int32) { f.forwardMany(v, ln, s) })
 		f.a.downwards(v, func(ln *solveLane, s int32) { f.backwardMany(v, ln, s) })
-		for c := range some {
-			f.store(dst[c*n:c*n+n], v.x[c/8*8*n+c%8:], 8, scaling[c])
+		for g := range width / 8 {
+			f.store(dst[8*g*n:min(8*(g+1), some)*n], v.x[8*g*n:8*(g+1)*n], 8, scaling[g])
 		}
 		f.a.putVectors(v)
 		dst, b, k = dst[some*n:], b[some*n:], k-some
