@@ -37,6 +37,11 @@ const (
 	// rim lets a ray pass an edge's end by this part of the edge, so that a ray through
 	// a vertex is found from at least one side.
 	rim = 1e-9
+	// halfDoubt and shadowDoubt are how much of a disagreement counts as error: of that
+	// between the two ends of an edge, of which the better is taken; and of that between a
+	// way round a corner and the straight line, were nothing in the way. Fitted to exact
+	// distances (TestErrorEstimate).
+	halfDoubt, shadowDoubt = 0.5, 0.25
 )
 
 // A state is what the front knows at one vertex.
@@ -53,7 +58,7 @@ type arrival struct {
 	right float64 // to the right: another where the ray has grazed a corner, see alongEdge
 	back  float64 // angle of the ray back, in the vertex's frame; NaN where there is none
 	noise float64 // how far directions may be off, from the curvature the ray has met
-	err   float64 // how far d may be off: what estimates on the way differed by, added up
+	err   float64 // how far d may be off: what estimates on the way differed by, weighed and added up
 	sides sides   // where the front started last, left and right of the ray
 	weak  bool    // on the word of one end of an edge only, or round a bend
 }
@@ -224,7 +229,7 @@ func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64)
 			// Straightened, were there nothing in the way, it would be this much shorter.
 			r := ray{kappa: max(w.at[q].left, w.at[q].right), ex: 1}
 			sin, cos := math.Sincos(angle)
-			a.err = length - r.at(length*cos, length*sin)
+			a.err = shadowDoubt * (length - r.at(length*cos, length*sin))
 		}
 	}
 	a.left, a.right = w.bend(a.left, length, v), w.bend(a.right, length, v)
@@ -318,10 +323,10 @@ func (w *front) throughEdge(best *arrival, v, a, b, h int32) {
 	case okA && okB:
 		w.offer(best, pass, ra, rb)
 	case okA:
-		pass.doubt = math.Abs(tooA)
+		pass.doubt = halfDoubt * math.Abs(tooA)
 		w.offer(best, pass, ra, ra)
 	case okB:
-		pass.doubt = math.Abs(tooB)
+		pass.doubt = halfDoubt * math.Abs(tooB)
 		w.offer(best, pass, rb, rb)
 	default:
 		// An end that has more than the other end's front foretells lies in its shadow.
@@ -401,7 +406,7 @@ func (w *front) roundCorner(best *arrival, p passage, r, dark ray, known bool, s
 		at = corner{before, at.x + bx/kappa, at.y + by/kappa, at.x, at.y}
 	}
 	if past(first.x, first.y) { // what stands next to the dark end will do, for want of better
-		p.doubt = dark.d - r.at(dark.x, 0)
+		p.doubt = shadowDoubt * (dark.d - r.at(dark.x, 0))
 		w.offer(best, p, r, r)
 	}
 }
