@@ -42,7 +42,7 @@ func prepared(t testing.TB, m *mesh.Mesh, resolve bool, data []mesh.Datum) (*mes
 	}
 	s.Delaunay(s.NumVertices)
 	if resolve {
-		if err := s.Resolve(s.ResolutionFor(20000), 1000000); err != nil {
+		if err := s.Resolve(s.ResolutionFor(40000), 1000000); err != nil {
 			t.Fatal(err)
 		}
 	}

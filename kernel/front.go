@@ -28,7 +28,7 @@ type front struct {
 
 const (
 	// flatNoise is the disagreement, relative to an edge, that rounding explains.
-	flatNoise = 1e-7
+	flatNoise = 1e-9
 	// curvedNoise times K·h², the turn of a frame from one vertex to the next, is the
 	// disagreement that discretisation explains. Chosen on spheres, tori and
 	// coils of 2 500 to 20 000 vertices: below 2 neighbours on rough meshes fall out with
@@ -126,22 +126,29 @@ func (w *front) sweep(order []int32) {
 }
 
 // mend takes up whatever a vertex later in the order could have told an earlier one:
-// values go down until none can. Weak ones, now that all is known, are first found
-// anew. It returns how many vertices changed.
+// values go down until none can. First weak ones, now that all is known, are found
+// anew, and what lies behind those that came too early. It returns how many changed.
 func (w *front) mend(order []int32) (changed int) {
 	var queue vertexHeap
 	queued := make([]bool, len(w.at))
+	misled := make([]bool, len(w.at)) // a neighbour came too early
 	try := func(v int32, anew bool) bool {
 		now := &w.at[v]
 		if now.fixed {
 			return false
 		}
 		a := w.arrive(v)
-		if !(a.d < now.d-w.slack(v)) && !(anew && now.weak && a.d != now.d) {
+		later := a.d > now.d+w.slack(v)
+		if !(a.d < now.d-w.slack(v)) && !(anew && (now.weak || misled[v]) && a.d != now.d) {
 			return false
 		}
 		now.arrival, now.done = a, true
 		changed++
+		if later {
+			for _, h := range w.frame.out(v) {
+				misled[w.s.Vert[next(h)]], misled[w.s.Vert[prev(h)]] = true, true
+			}
+		}
 		return true
 	}
 	wake := func(v int32) {

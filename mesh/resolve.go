@@ -69,7 +69,9 @@ func (s *Surface) needed(maxEdge float64) float64 {
 }
 
 // ResolutionFor is the edge length that gives a surface of this area about as many
-// vertices as it has, or least if it has fewer: edges longer than that stand out.
+// vertices as it has, or least if it has fewer: longer edges stand out. A curved skin
+// is not asked for more than it has: new vertices would lie on its flat triangles and
+// not on the skin, and distances on it are better as it is.
 func (s *Surface) ResolutionFor(least int) float64 {
 	area, used := 0.0, 0
 	for f := range int32(s.NumFaces()) {
@@ -80,9 +82,41 @@ func (s *Surface) ResolutionFor(least int) float64 {
 			used++
 		}
 	}
+	if s.curved() {
+		least = 0
+	}
 	// Equal triangles with edge L: area/n = L²·√3/2. Even meshes of a scan have edges
 	// of up to twice the mean.
 	return 2.3 * math.Sqrt(area/float64(max(used, least)))
+}
+
+// curved tells whether most vertices sample a smooth curved skin: the angle defect is
+// neither nothing, as on flat faces, nor so much that a geodesic would turn by more than
+// mostTurn radians over the longest edge there, as at the corners of a part.
+func (s *Surface) curved() bool {
+	const leastDefect, mostTurn = 1e-6, 0.3
+	angle, longest := make([]float64, s.NumVertices), make([]float64, s.NumVertices)
+	rim := make([]bool, s.NumVertices)
+	for h, v := range s.Vert {
+		angle[v] += s.Angle(int32(h))
+		l := s.Length[h]
+		longest[v], longest[s.head(int32(h))] = max(longest[v], l), max(longest[s.head(int32(h))], l)
+		if s.Boundary(int32(h)) {
+			rim[v], rim[s.head(int32(h))] = true, true
+		}
+	}
+	inner, skin := 0, 0
+	for v, area := range s.LumpedMass() {
+		if area == 0 || rim[v] {
+			continue
+		}
+		inner++
+		defect := math.Abs(2*math.Pi - angle[v])
+		if defect > leastDefect && defect*longest[v]*longest[v] < mostTurn*area {
+			skin++
+		}
+	}
+	return 2*skin > inner
 }
 
 type overlong struct {
