@@ -114,6 +114,28 @@ func TestFans(t *testing.T) {
 	}
 }
 
+// A hub that is all but flat must not be taken for flat: chords of the developed
+// sectors, either way round. Positions carry the hub's angle to some 1e-15.
+func TestFansAllButFlat(t *testing.T) {
+	const n = 12
+	slants := []float64{0.25, 0.5, 1, 1.5}
+	for _, missing := range []float64{1e-3, 1e-6, 1e-8, 1e-10, 1e-12, -1e-3, -1e-6, -1e-8, -1e-10} {
+		angle := (2*math.Pi - missing) / n
+		d := field(t, meshtest.Fan(n, angle, slants), mesh.AtVertex(3)) // slant 1 on spoke 0
+		for v := 1; v < len(d); v++ {
+			spoke, slant := (v-1)/len(slants), slants[(v-1)%len(slants)]
+			beta := angle * float64(min(spoke, n-spoke))
+			want := 1 + slant
+			if beta < math.Pi {
+				want = math.Sqrt(1 + slant*slant - 2*slant*math.Cos(beta))
+			}
+			if math.Abs(d[v]-want) > rounding {
+				t.Errorf("%g short of a full turn, spoke %d, slant %g: got %.17g, want %.17g", missing, spoke, slant, d[v], want)
+			}
+		}
+	}
+}
+
 // testdata/reference/distance_plate.csv: visibility graphs. Slit tips and notches are
 // vertices of the boundary at which the line bends.
 func TestPlatesWithNotchAndSlit(t *testing.T) {

@@ -1,6 +1,7 @@
 package geodesic_test
 
 import (
+	"math"
 	"testing"
 
 	"heatskin/internal/meshtest"
@@ -57,6 +58,23 @@ func TestSeveral(t *testing.T) {
 	}
 	if !line.Several {
 		t.Error("two corners equally far: one line")
+	}
+}
+
+// Lines that part and meet again before the last bend are several.
+func TestSeveralBeforeABend(t *testing.T) {
+	o := meshtest.Octahedron(1)
+	n := int32(o.NumVertices())
+	tip := o.Positions[3:6] // vertex 1, from which one more triangle hangs
+	m := build(t, append(append([]float64(nil), o.Positions...), tip[0]-1, 1, 0, tip[0]-1, -1, 0),
+		append(append([]int32(nil), o.Triangles...), 1, n, n+1)...)
+	line, err := geodesic.Path(t.Context(), m, []mesh.Datum{mesh.AtVertex(0)}, []mesh.Datum{mesh.AtVertex(n)})
+	if err != nil {
+		t.Fatal(err)
+	}
+	near(t, "tip to tip and on", line.Length, math.Sqrt(3)+math.Sqrt(2), 1e-14)
+	if !line.Several {
+		t.Error("four ways to the tip: one line")
 	}
 }
 

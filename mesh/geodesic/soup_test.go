@@ -41,7 +41,11 @@ func soup(t *testing.T, seed uint64) *mesh.Mesh {
 // over a graph of points on the edges, and takes little memory. Coordinates are up to
 // 3, so 1e-14 is some tens of ulps of what distances are computed from.
 func TestSoup(t *testing.T) {
+	seeds := []uint64{1724} // has a source on an edge whose rays another window cuts off at its very foot
 	for seed := range uint64(250) {
+		seeds = append(seeds, seed)
+	}
+	for _, seed := range seeds {
 		m := soup(t, seed)
 		s := geodesic.NewSolver(m)
 		n := m.NumVertices()
