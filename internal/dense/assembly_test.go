@@ -48,42 +48,68 @@ func TestSubtractFlushesSubnormals(t *testing.T) {
 	}
 }
 
-func TestVectorAssemblyMatchesGo(t *testing.T) {
-	if !useAVX512 {
-		return // the Go versions are all there is
-	}
-	rng := rand.New(rand.NewPCG(7, 8))
-	for n := 1; n <= 8; n++ {
-		for blocks := 1; blocks <= 9; blocks++ {
-			for shift := range 4 {
-				_, p := fenced(rng, 8*n*blocks, shift, math.NaN())
-				_, x := fenced(rng, n, shift, math.NaN())
-				want, y := fenced(rng, 8*blocks, shift, 1)
-				got := slices.Clone(want)
-				mulSubGo(y, p, x, blocks, n)
-				mulSubAVX512(&got[shift+4], &p[0], &x[0], blocks, n)
-				sameBits(t, got, want, "MulSub n=%d blocks=%d shift=%d", n, blocks, shift)
+// The kernels that take pointers, in each kind of assembly that the processor has.
+type assembly struct {
+	name                string
+	mulSub, mulTransSub func(to, p, from *float64, blocks, n int)
+	solveRight          func(x, l *float64, blocks int)
+}
 
-				_, y = fenced(rng, 8*blocks, shift, math.NaN())
-				want, s := fenced(rng, n, shift, 1)
-				got = slices.Clone(want)
-				mulTransSubGo(s, p, y, blocks, n)
-				mulTransSubAVX512(&got[shift+4], &p[0], &y[0], blocks, n)
-				sameBits(t, got, want, "MulTransSub n=%d blocks=%d shift=%d", n, blocks, shift)
+func assemblies() (list []assembly) {
+	if useAVX512 {
+		list = append(list, assembly{"AVX-512", mulSubAVX512, mulTransSubAVX512, solveRightAVX512})
+	}
+	if useAVX2 {
+		list = append(list, assembly{"AVX2", mulSubAVX2, mulTransSubAVX2, solveRightAVX2})
+	}
+	return list
+}
+
+func TestVectorAssemblyMatchesGo(t *testing.T) {
+	rng := rand.New(rand.NewPCG(7, 8))
+	for _, asm := range assemblies() {
+		for n := 1; n <= 8; n++ {
+			for blocks := 1; blocks <= 9; blocks++ {
+				for shift := range 4 {
+					_, p := fenced(rng, 8*n*blocks, shift, math.NaN())
+					_, x := fenced(rng, n, shift, math.NaN())
+					want, y := fenced(rng, 8*blocks, shift, 1)
+					got := slices.Clone(want)
+					mulSubGo(y, p, x, blocks, n)
+					asm.mulSub(&got[shift+4], &p[0], &x[0], blocks, n)
+					sameBits(t, got, want, "%s: MulSub n=%d blocks=%d shift=%d", asm.name, n, blocks, shift)
+
+					_, y = fenced(rng, 8*blocks, shift, math.NaN())
+					want, s := fenced(rng, n, shift, 1)
+					got = slices.Clone(want)
+					mulTransSubGo(s, p, y, blocks, n)
+					asm.mulTransSub(&got[shift+4], &p[0], &y[0], blocks, n)
+					sameBits(t, got, want, "%s: MulTransSub n=%d blocks=%d shift=%d", asm.name, n, blocks, shift)
+				}
 			}
 		}
 	}
+}
+
+func TestTriangleAssemblyMatchesGo(t *testing.T) {
+	rng := rand.New(rand.NewPCG(7, 9))
 	for blocks := 1; blocks <= 9; blocks++ {
 		for shift := range 4 {
 			l := triangle(rng, 8)
-			want, x := fenced(rng, 64*blocks, shift, 1)
-			got := slices.Clone(want)
+			before, x := fenced(rng, 64*blocks, shift, 1)
+			before = slices.Clone(before)
 			solveRightGo(x, l, blocks, 8)
-			solveRightAVX512(&got[shift+4], &l[0], blocks)
-			sameBits(t, got, want, "SolveRight blocks=%d shift=%d", blocks, shift)
-
-			want, x = fenced(rng, 64, shift, 1)
-			got = slices.Clone(want)
+			for _, asm := range assemblies() {
+				got := slices.Clone(before)
+				asm.solveRight(&got[shift+4], &l[0], blocks)
+				sameBits(t, got[shift+4:shift+4+len(x)], x, "%s: SolveRight blocks=%d shift=%d", asm.name, blocks, shift)
+				fences(t, got, shift, len(x))
+			}
+			if !useAVX512 {
+				continue
+			}
+			want, x := fenced(rng, 64, shift, 1)
+			got := slices.Clone(want)
 			solveRightTransGo(x, l, 8)
 			solveRightTransAVX512(&got[shift+4], &l[0])
 			sameBits(t, got, want, "SolveRightTrans shift=%d", shift)

@@ -145,3 +145,197 @@ next:
 	LDMXCSR mxcsr-8(SP)
 	VZEROUPPER
 	RET
+
+#define PIVOT(o, z) \
+	VBROADCASTSD o(SI), Y8 \
+	VMULPD Y8, z, z
+
+#define TERM(o, j, z) \
+	VBROADCASTSD o(SI), Y8 \
+	VFNMADD231PD Y8, j, z
+
+// func solveRightAVX2(x, l *float64, blocks int)
+//
+// Four rows at a time: column k is Yk. The halves of blocks are independent of each other,
+// so that their chains of operations overlap.
+TEXT ·solveRightAVX2(SB), NOSPLIT, $16-24
+	STMXCSR mxcsr-8(SP)
+	MOVL mxcsr-8(SP), AX
+	ORL  $0x8040, AX
+	MOVL AX, flush-16(SP)
+	LDMXCSR flush-16(SP)
+	MOVQ x+0(FP), DI
+	MOVQ l+8(FP), SI
+	MOVQ blocks+16(FP), CX
+	SHLQ $1, CX
+	MOVQ $32, DX // to the other half of the block, then to the next block
+
+half:
+	VMOVUPD 0(DI), Y0
+	VMOVUPD 64(DI), Y1
+	VMOVUPD 128(DI), Y2
+	VMOVUPD 192(DI), Y3
+	VMOVUPD 256(DI), Y4
+	VMOVUPD 320(DI), Y5
+	VMOVUPD 384(DI), Y6
+	VMOVUPD 448(DI), Y7
+	PIVOT(0, Y0)
+	TERM(8, Y0, Y1)
+	TERM(16, Y0, Y2)
+	TERM(24, Y0, Y3)
+	TERM(32, Y0, Y4)
+	TERM(40, Y0, Y5)
+	TERM(48, Y0, Y6)
+	TERM(56, Y0, Y7)
+	PIVOT(72, Y1)
+	TERM(80, Y1, Y2)
+	TERM(88, Y1, Y3)
+	TERM(96, Y1, Y4)
+	TERM(104, Y1, Y5)
+	TERM(112, Y1, Y6)
+	TERM(120, Y1, Y7)
+	PIVOT(144, Y2)
+	TERM(152, Y2, Y3)
+	TERM(160, Y2, Y4)
+	TERM(168, Y2, Y5)
+	TERM(176, Y2, Y6)
+	TERM(184, Y2, Y7)
+	PIVOT(216, Y3)
+	TERM(224, Y3, Y4)
+	TERM(232, Y3, Y5)
+	TERM(240, Y3, Y6)
+	TERM(248, Y3, Y7)
+	PIVOT(288, Y4)
+	TERM(296, Y4, Y5)
+	TERM(304, Y4, Y6)
+	TERM(312, Y4, Y7)
+	PIVOT(360, Y5)
+	TERM(368, Y5, Y6)
+	TERM(376, Y5, Y7)
+	PIVOT(432, Y6)
+	TERM(440, Y6, Y7)
+	PIVOT(504, Y7)
+	VMOVUPD Y0, 0(DI)
+	VMOVUPD Y1, 64(DI)
+	VMOVUPD Y2, 128(DI)
+	VMOVUPD Y3, 192(DI)
+	VMOVUPD Y4, 256(DI)
+	VMOVUPD Y5, 320(DI)
+	VMOVUPD Y6, 384(DI)
+	VMOVUPD Y7, 448(DI)
+	ADDQ DX, DI
+	XORQ $(32^480), DX
+	DECQ CX
+	JNZ  half
+	LDMXCSR mxcsr-8(SP)
+	VZEROUPPER
+	RET
+
+// func mulSubAVX2(y, p, x *float64, blocks, n int)
+TEXT ·mulSubAVX2(SB), NOSPLIT, $0-40
+	MOVQ y+0(FP), DI
+	MOVQ p+8(FP), SI
+	MOVQ x+16(FP), DX
+	MOVQ blocks+24(FP), CX
+	MOVQ n+32(FP), R8
+
+block:
+	VMOVUPD 0(DI), Y0
+	VMOVUPD 32(DI), Y1
+	XORQ    AX, AX
+
+column:
+	VBROADCASTSD (DX)(AX*8), Y2
+	VFNMADD231PD 0(SI), Y2, Y0
+	VFNMADD231PD 32(SI), Y2, Y1
+	ADDQ $64, SI
+	INCQ AX
+	CMPQ AX, R8
+	JLT  column
+	VMOVUPD Y0, 0(DI)
+	VMOVUPD Y1, 32(DI)
+	ADDQ $64, DI
+	DECQ CX
+	JNZ  block
+	VZEROUPPER
+	RET
+
+// Fold the eight lanes in lo, hi and add the sum to the value at s.
+#define FOLD(lo, hi, xlo, s) \
+	VADDPD       hi, lo, lo     \
+	VEXTRACTF128 $1, lo, X15    \
+	VADDPD       X15, xlo, xlo  \
+	VPERMILPD    $1, xlo, X15   \
+	VADDSD       X15, xlo, xlo  \
+	VADDSD       s, xlo, xlo    \
+	VMOVSD       xlo, s
+
+// func mulTransSubAVX2(s, p, y *float64, blocks, n int)
+//
+// Four columns at a time, then single ones.
+TEXT ·mulTransSubAVX2(SB), NOSPLIT, $0-40
+	MOVQ s+0(FP), DI
+	MOVQ p+8(FP), SI
+	MOVQ y+16(FP), DX
+	MOVQ blocks+24(FP), CX
+	MOVQ n+32(FP), R8
+	MOVQ R8, R9
+	SHLQ $6, R9 // bytes in a block
+
+columns:
+	MOVQ SI, R10
+	MOVQ DX, R11
+	MOVQ CX, R12
+	VXORPD Y0, Y0, Y0
+	VXORPD Y1, Y1, Y1
+	CMPQ R8, $4
+	JLT  single
+	VXORPD Y2, Y2, Y2
+	VXORPD Y3, Y3, Y3
+	VXORPD Y4, Y4, Y4
+	VXORPD Y5, Y5, Y5
+	VXORPD Y6, Y6, Y6
+	VXORPD Y7, Y7, Y7
+
+four:
+	VMOVUPD 0(R11), Y8
+	VMOVUPD 32(R11), Y9
+	VFNMADD231PD 0(R10), Y8, Y0
+	VFNMADD231PD 32(R10), Y9, Y1
+	VFNMADD231PD 64(R10), Y8, Y2
+	VFNMADD231PD 96(R10), Y9, Y3
+	VFNMADD231PD 128(R10), Y8, Y4
+	VFNMADD231PD 160(R10), Y9, Y5
+	VFNMADD231PD 192(R10), Y8, Y6
+	VFNMADD231PD 224(R10), Y9, Y7
+	ADDQ $64, R11
+	ADDQ R9, R10
+	DECQ R12
+	JNZ  four
+	FOLD(Y0, Y1, X0, 0(DI))
+	FOLD(Y2, Y3, X2, 8(DI))
+	FOLD(Y4, Y5, X4, 16(DI))
+	FOLD(Y6, Y7, X6, 24(DI))
+	ADDQ $256, SI
+	ADDQ $32, DI
+	SUBQ $4, R8
+	JNZ  columns
+	VZEROUPPER
+	RET
+
+single:
+	VMOVUPD 0(R11), Y8
+	VMOVUPD 32(R11), Y9
+	VFNMADD231PD 0(R10), Y8, Y0
+	VFNMADD231PD 32(R10), Y9, Y1
+	ADDQ $64, R11
+	ADDQ R9, R10
+	DECQ R12
+	JNZ  single
+	FOLD(Y0, Y1, X0, 0(DI))
+	ADDQ $64, SI
+	ADDQ $8, DI
+	DECQ R8
+	JNZ  columns
+	VZEROUPPER
+	RET

@@ -30,8 +30,21 @@ func solveRightAVX512(x, l *float64, blocks int)
 //go:noescape
 func solveRightTransAVX512(x, l *float64)
 
+// solveRightAVX2 is solveRightGo with n = 8. Results below 2^-1022 become zero.
+//
+//go:noescape
+func solveRightAVX2(x, l *float64, blocks int)
+
+// The vector kernels keep results below 2^-1022, which may be parts of a solution.
+//
 //go:noescape
 func mulSubAVX512(y, p, x *float64, blocks, n int)
 
 //go:noescape
 func mulTransSubAVX512(s, p, y *float64, blocks, n int)
+
+//go:noescape
+func mulSubAVX2(y, p, x *float64, blocks, n int)
+
+//go:noescape
+func mulTransSubAVX2(s, p, y *float64, blocks, n int)

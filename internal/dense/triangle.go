@@ -38,11 +38,14 @@ func SolveRight(x, l []float64, blocks, n int) {
 	if blocks <= 0 {
 		return
 	}
-	if useAVX512 && n == 8 {
+	switch {
+	case useAVX512 && n == 8:
 		solveRightAVX512(&x[0], &l[0], blocks)
-		return
+	case useAVX2 && n == 8:
+		solveRightAVX2(&x[0], &l[0], blocks)
+	default:
+		solveRightGo(x, l, blocks, n)
 	}
-	solveRightGo(x, l, blocks, n)
 }
 
 func solveRightGo(x, l []float64, blocks, n int) {

@@ -9,11 +9,14 @@ func MulSub(y, p, x []float64, blocks, n int) {
 	if blocks <= 0 {
 		return
 	}
-	if useAVX512 {
+	switch {
+	case useAVX512:
 		mulSubAVX512(&y[0], &p[0], &x[0], blocks, n)
-		return
+	case useAVX2:
+		mulSubAVX2(&y[0], &p[0], &x[0], blocks, n)
+	default:
+		mulSubGo(y, p, x, blocks, n)
 	}
-	mulSubGo(y, p, x, blocks, n)
 }
 
 func mulSubGo(y, p, x []float64, blocks, n int) {
@@ -37,11 +40,14 @@ func MulTransSub(s, p, y []float64, blocks, n int) {
 	if blocks <= 0 {
 		return
 	}
-	if useAVX512 {
+	switch {
+	case useAVX512:
 		mulTransSubAVX512(&s[0], &p[0], &y[0], blocks, n)
-		return
+	case useAVX2:
+		mulTransSubAVX2(&s[0], &p[0], &y[0], blocks, n)
+	default:
+		mulTransSubGo(s, p, y, blocks, n)
 	}
-	mulTransSubGo(s, p, y, blocks, n)
 }
 
 func mulTransSubGo(s, p, y []float64, blocks, n int) {
