@@ -103,6 +103,9 @@ type failure struct {
 }
 
 func (f *Factor) factorize(ctx context.Context) error {
+	if err := ctx.Err(); err != nil {
+		return err
+	}
 	pl := f.a.plan
 	failures := make([]failure, len(pl.subtrees))
 	var stop atomic.Bool

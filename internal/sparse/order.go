@@ -56,6 +56,9 @@ type tool struct {
 // renumbered graph in which neighbours are near in memory: perm[k] is the vertex of g eliminated k-th, row
 // near[perm[k]] of p. coords, 3 a row, may be nil. The order does not depend on the number of workers.
 func dissect(ctx context.Context, p *Pattern, coords []float64, workers int) (g *graph, near, perm []int32, err error) {
+	if err := ctx.Err(); err != nil {
+		return nil, nil, nil, err
+	}
 	n := p.Dim()
 	var xyz []float32
 	if len(coords) == 3*n {
