@@ -20,37 +20,53 @@ const roundEdge = 40 * math.Pi / 180
 // q = II(e, e) for the edges e: to second order a path on it is longer by
 // z̄·tr(II)/2 - mean|∇z|²/4, where z̄ = (q1+q2+q3)/24.
 func ChordError(m *Mesh) float64 {
+	m, _, _ = m.alongCurve()
 	glued := glue(m.Triangles, m.NumVertices())
 	bends := bends(m, glued)
-	sum, total := 0.0, 0.0
-	for f := range int32(m.NumTriangles()) {
-		t := m.Triangles[3*f : 3*f+3]
-		if !hasArea(m.Positions, t[0], t[1], t[2]) {
-			continue
+	type sums struct{ over, area float64 }
+	blocks := make([]sums, numBlocks(m.NumTriangles()))
+	eachBlock(m.NumTriangles(), func(block, lo, hi int) {
+		s := &blocks[block]
+		for f := int32(lo); f < int32(hi); f++ {
+			over, area := m.chordError(f, glued, bends)
+			s.over += over * area
+			s.area += area
 		}
-		normal, area := m.facing(f)
-		total += area
-		var bend, length [3]float64
-		var along [3][3]float64
-		for k := range int32(3) {
-			h := 3*f + k
-			along[k] = minus3(m.corner(next(h)), m.corner(h))
-			length[k] = length3(along[k])
-			g := glued[h]
-			if g == h || glued[g] != h || !(bends[h] <= roundEdge) {
-				continue // no chord of a curved skin
-			}
-			bend[k] = bends[h]
-			if dot3(normal, minus3(m.corner(prev(g)), m.corner(g))) > 0 {
-				bend[k] = -bend[k] // hollow
-			}
-		}
-		sum += area * overhang(along, length, bend, normal, area)
+	})
+	var all sums
+	for _, s := range blocks {
+		all.over += s.over
+		all.area += s.area
 	}
-	if total == 0 {
+	if all.area == 0 {
 		return 0
 	}
-	return sum / total
+	return all.over / all.area
+}
+
+// chordError is that of triangle f, and its area: 0 where it has none.
+func (m *Mesh) chordError(f int32, glued []int32, bends []float64) (over, area float64) {
+	t := m.Triangles[3*f : 3*f+3]
+	if !hasArea(m.Positions, t[0], t[1], t[2]) {
+		return 0, 0
+	}
+	normal, area := m.facing(f)
+	var bend, length [3]float64
+	var along [3][3]float64
+	for k := range int32(3) {
+		h := 3*f + k
+		along[k] = minus3(m.corner(next(h)), m.corner(h))
+		length[k] = length3(along[k])
+		g := glued[h]
+		if g == h || glued[g] != h || !(bends[h] <= roundEdge) {
+			continue // no chord of a curved skin
+		}
+		bend[k] = bends[h]
+		if dot3(normal, minus3(m.corner(prev(g)), m.corner(g))) > 0 {
+			bend[k] = -bend[k] // hollow
+		}
+	}
+	return overhang(along, length, bend, normal, area), area
 }
 
 // overhang is the relative length, over all directions, that a path gains by running

@@ -59,53 +59,87 @@ func Bends(m *Mesh) []float64 { return bends(m, glue(m.Triangles, m.NumVertices(
 
 func bends(m *Mesh, glued []int32) []float64 {
 	bend := make([]float64, len(m.Triangles))
-	for h := range bend {
-		bend[h] = math.NaN()
-	}
 	noise := m.noise()
+	crowded := gather(len(bend), func(h int32) bool {
+		o := glued[h]
+		switch {
+		case o == h:
+			bend[h] = math.NaN()
+		case glued[o] != h:
+			return true
+		case h < o: // both faces' business, so one of them sees to it
+			a, okA := m.into(h, glued, noise)
+			b, okB := m.into(o, glued, noise)
+			if okA && okB {
+				angle := bendBetween(a, b)
+				bend[h], bend[o] = angle, angle
+			}
+		}
+		return false
+	})
+	seen := make(map[int32]bool, len(crowded))
 	var directions [][3]float64
-	eachInnerEdge(glued, func(h int32) {
+	for _, h := range crowded {
+		if seen[h] {
+			continue
+		}
 		directions = directions[:0]
-		for o := h; ; {
+		for o := h; !seen[o]; o = glued[o] {
+			seen[o] = true
 			if d, ok := m.into(o, glued, noise); ok {
 				directions = append(directions, d)
-			}
-			if o = glued[o]; o == h {
-				break
 			}
 		}
 		angle := 0.0
 		switch {
 		case len(directions) == 2:
-			a, b := directions[0], directions[1]
-			angle = math.Atan2(length3(cross3(a, b)), -dot3(a, b))
+			angle = bendBetween(directions[0], directions[1])
 		case len(directions) > 2:
 			angle = leastContinued(directions)
 		}
-		for o := h; ; {
+		bend[h] = angle
+		for o := glued[h]; o != h; o = glued[o] {
 			bend[o] = angle
-			if o = glued[o]; o == h {
-				break
-			}
 		}
-	})
+	}
 	return bend
+}
+
+// bendBetween is the bend between two faces that go in these directions from their edge.
+func bendBetween(a, b [3]float64) float64 {
+	return math.Atan2(length3(cross3(a, b)), -dot3(a, b))
 }
 
 // noise is the height up to which a triangle has no direction: 16 times what single
 // precision rounds off, and a millionth of the part's size, which no file is exact to.
 func (m *Mesh) noise() float64 {
-	lo, hi := emptyBox()
-	largest, single := 0.0, true
-	for i, x := range m.Positions {
-		axis := i % 3
-		lo[axis], hi[axis] = min(lo[axis], x), max(hi[axis], x)
-		largest = max(largest, math.Abs(x))
-		single = single && float64(float32(x)) == x
+	type extent struct {
+		box    box3
+		double bool // some coordinate does not fit in single precision
 	}
-	noise := 0x1p-20 * max(hi[0]-lo[0], hi[1]-lo[1], hi[2]-lo[2])
-	if single {
-		noise = max(noise, 0x1p-20*largest)
+	blocks := make([]extent, numBlocks(m.NumVertices()))
+	eachBlock(m.NumVertices(), func(block, lo, hi int) {
+		e := extent{box: noBox()}
+		for v := lo; v < hi; v++ {
+			p := point3(m.Positions, int32(v))
+			e.box.add(p)
+			for _, x := range p {
+				e.double = e.double || float64(float32(x)) != x
+			}
+		}
+		blocks[block] = e
+	})
+	box, double := noBox(), false
+	for _, e := range blocks {
+		box.add(e.box.lo)
+		box.add(e.box.hi)
+		double = double || e.double
+	}
+	noise := 0x1p-20 * box.size()
+	if !double {
+		for axis := range box.lo {
+			noise = max(noise, 0x1p-20*math.Abs(box.lo[axis]), 0x1p-20*math.Abs(box.hi[axis]))
+		}
 	}
 	return noise
 }

@@ -80,7 +80,7 @@ func (s *Surface) assemble(share func(h int32) float64) *sparse.Matrix {
 		adj []int32
 		off []float64
 	}
-	blocks := make([]block, (n+blockSize-1)/blockSize)
+	blocks := make([]block, numBlocks(n))
 	eachBlock(n, func(number, lo, hi int) {
 		b := block{make([]int32, 0, 7*(hi-lo)), make([]float64, 0, 7*(hi-lo))}
 		var keys []uint64 // other end << 32 | halfedge

@@ -14,10 +14,13 @@ const blockSize = 1 << 12
 // goroutines as there are processors. The blocks are the same for any number of them,
 // so what is summed by block, and then over blocks in order, is too.
 func eachBlock(n int, do func(block, lo, hi int)) {
-	eachPart((n+blockSize-1)/blockSize, func(block int) {
+	eachPart(numBlocks(n), func(block int) {
 		do(block, block*blockSize, min(n, (block+1)*blockSize))
 	})
 }
+
+// numBlocks is how many blocks eachBlock makes of n.
+func numBlocks(n int) int { return (n + blockSize - 1) / blockSize }
 
 // eachPart calls do for the numbers below parts, on as many goroutines as there are
 // processors, low ones first. It returns when all calls have.
@@ -47,7 +50,7 @@ func eachPart(parts int, do func(part int)) {
 
 // gather lists the numbers below n that are wanted, in rising order.
 func gather(n int, wanted func(i int32) bool) []int32 {
-	found := make([][]int32, (n+blockSize-1)/blockSize)
+	found := make([][]int32, numBlocks(n))
 	eachBlock(n, func(block, lo, hi int) {
 		for i := int32(lo); i < int32(hi); i++ {
 			if wanted(i) {

@@ -78,25 +78,10 @@ func NewSurface(m *Mesh) (*Surface, error) {
 	if err := m.checkRange(); err != nil {
 		return nil, err
 	}
-	s := &Surface{mesh: m, NumOriginal: m.NumVertices()}
-	s.parent = alongCurve(m.Positions, m.Triangles)
-	corners := make([]int32, len(m.Triangles))
-	eachBlock(len(s.parent), func(_, lo, hi int) {
-		for i := lo; i < hi; i++ {
-			copy(corners[3*i:3*i+3], m.Triangles[3*s.parent[i]:])
-		}
-	})
 	// Until the end, vertices are numbered as they come along the curve, too.
-	number, vertex := numberByFirst(corners, m.NumVertices())
-	s.NumVertices = len(vertex)
-	s.Positions = make([]float64, 3*len(vertex))
-	eachBlock(len(vertex), func(_, lo, hi int) {
-		for v := lo; v < hi; v++ {
-			copy(s.Positions[3*v:3*v+3], m.Positions[3*vertex[v]:])
-		}
-	})
-	renumber(corners, corners, number)
-	s.keepFaces(corners)
+	local, triangle, vertex := m.alongCurve()
+	s := &Surface{mesh: m, NumOriginal: m.NumVertices(), NumVertices: len(vertex), Positions: local.Positions, parent: triangle}
+	s.keepFaces(local.Triangles)
 	if len(s.Vert) == 0 {
 		return nil, &EmptyError{Triangles: m.NumTriangles()}
 	}
@@ -129,15 +114,6 @@ func (s *Surface) numberAsMesh(vertex []int32) {
 	}
 	s.NoValue, s.NumVertices = noValue, s.NumOriginal
 	s.Positions = slices.Clip(s.mesh.Positions) // the mesh's own: a vertex that is added makes a copy
-}
-
-// renumber sets dst[i] to number[src[i]]. dst may be src.
-func renumber(dst, src, number []int32) {
-	eachBlock(len(src), func(_, lo, hi int) {
-		for i, v := range src[lo:hi] {
-			dst[lo+i] = number[v]
-		}
-	})
 }
 
 // Renumbered is s with its vertices numbered as its faces come, so that what is near on
@@ -189,7 +165,7 @@ func (s *Surface) Renumbered() (r *Surface, vertex []int32) {
 }
 
 func (m *Mesh) checkRange() error {
-	blocks := make([]box3, (len(m.Triangles)+blockSize-1)/blockSize)
+	blocks := make([]box3, numBlocks(len(m.Triangles)))
 	eachBlock(len(m.Triangles), func(block, lo, hi int) {
 		b := noBox()
 		for _, v := range m.Triangles[lo:hi] {
