@@ -110,7 +110,7 @@ Lengths are the file's own; a diffusivity is in length^2 per second.`,
 	flags.BoolVarP(&j.quiet, "quiet", "q", false, "keep warnings and errors only")
 	j.profile.register(flags)
 
-	for _, cmd := range []*cobra.Command{newCheck(j), newDistance(j), newPath(j), newKernel(j), newModes(j), newPassage(j)} {
+	for _, cmd := range []*cobra.Command{newCheck(j), newDistance(j), newPath(j), newKernel(j), newDiffuse(j), newModes(j), newPassage(j)} {
 		cmd.Flags().SortFlags = false
 		cmd.DisableFlagsInUseLine = true
 		run := cmd.RunE

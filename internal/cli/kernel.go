@@ -25,6 +25,8 @@ type heatSummary struct {
 	MeshError    number `json:"estimated_mesh_error"` // of the edges near the source, relative
 	LowestValue  number `json:"lowest_value"`
 	LargestValue number `json:"largest_value"`
+
+	*balanceSummary // diffuse: where the heat came from and went
 }
 
 // stepperFlags choose how time is crossed: --stepper --tolerance --steps.
@@ -32,6 +34,7 @@ type stepperFlags struct {
 	stepper   string
 	tolerance float64
 	steps     int
+	doubling  bool // implicit-euler may double its steps up to a tolerance
 }
 
 const (
@@ -43,7 +46,11 @@ func (s *stepperFlags) register(cmd *cobra.Command) {
 	flags := cmd.Flags()
 	oneOfVar(flags, &s.stepper, "stepper", krylov, []string{krylov, implicitEuler},
 		"`krylov|implicit-euler`: to a tolerance, or in equal steps that never overshoot")
-	positiveVar(flags, &s.tolerance, "tolerance", kernel.DefaultTolerance, "krylov: `ERROR` in time, relative to the largest value")
+	usage := "krylov: `ERROR` in time, relative to the largest value"
+	if s.doubling {
+		usage += "; implicit-euler: its steps are doubled until two runs differ by less"
+	}
+	positiveVar(flags, &s.tolerance, "tolerance", kernel.DefaultTolerance, usage)
 	s.steps = kernel.DefaultSteps
 	varFunc(flags, "steps", strconv.Itoa(s.steps), "implicit-euler: `N` steps up to each time from the one before", func(text string) error {
 		n, err := whole(text, 1)
@@ -56,10 +63,13 @@ func (s *stepperFlags) register(cmd *cobra.Command) {
 
 // check refuses a flag that the chosen stepper would not look at.
 func (s *stepperFlags) check(cmd *cobra.Command) error {
+	tolerance, steps := cmd.Flags().Changed("tolerance"), cmd.Flags().Changed("steps")
 	switch {
-	case s.stepper == implicitEuler && cmd.Flags().Changed("tolerance"):
+	case s.stepper == implicitEuler && tolerance && !s.doubling:
 		return usagef("--tolerance belongs to --stepper krylov; implicit-euler takes --steps N")
-	case s.stepper == krylov && cmd.Flags().Changed("steps"):
+	case s.stepper == implicitEuler && tolerance && steps:
+		return usagef("--steps and --tolerance: implicit-euler takes as many steps as it is told, or as it needs; choose one")
+	case s.stepper == krylov && steps:
 		return usagef("--steps belongs to --stepper implicit-euler; krylov takes --tolerance")
 	case s.tolerance >= 1:
 		return usagef("--tolerance %g: want an error below 1", s.tolerance)

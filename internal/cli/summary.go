@@ -33,6 +33,7 @@ type summary struct {
 	*pathSummary
 	*modesSummary
 	*passageSummary
+	*steadySummary
 	Check *mesh.Report `json:"check,omitempty"`
 }
 
