@@ -16,7 +16,7 @@ type layout struct {
 	degenerate bool    // A and B coincide: the rest is not set
 }
 
-// third is corner or halfedge k+1 (mod 3) of the same triangle, second k+2.
+// following and preceding are the next and the last halfedge around the triangle of h.
 func following(h int32) int32 {
 	if h%3 == 2 {
 		return h - 2

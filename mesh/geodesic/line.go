@@ -30,8 +30,8 @@ func Path(ctx context.Context, m *mesh.Mesh, from, to []mesh.Datum) (*Line, erro
 // no path leads there (within opt.Radius). It runs the wave until the target is
 // reached and follows straight lines back, unrolling triangles as it goes; where those
 // go astray among triangles without area it runs the wave again and keeps its windows
-// to be led by them. Of opt it
-// heeds Radius and MaxBytes. Errors are those of Spread, and a *TraceError.
+// to be led by them. Of opt it heeds Radius and MaxBytes. Errors are those of Spread,
+// and a *TraceError.
 func (s *Solver) Path(ctx context.Context, from, to []mesh.Datum, opt Options) (*Line, error) {
 	opt = Options{Targets: to, Any: true, Radius: opt.Radius, MaxBytes: opt.MaxBytes}
 	line, err := s.path(ctx, from, opt)

@@ -295,6 +295,9 @@ func TestEarlyStop(t *testing.T) {
 	if disc.Reach != 0.5 {
 		t.Errorf("reach %v", disc.Reach)
 	}
+	if share := float64(disc.Windows) / float64(full.Windows); share > 0.05 { // 6 % of the sphere, where it has few windows
+		t.Errorf("a radius of 0.5 took %g of the windows", share)
+	}
 	any, err := s.Spread(t.Context(), source, geodesic.Options{Any: true,
 		Targets: []mesh.Datum{mesh.AtVertex(target), mesh.AtVertex(int32(m.NumVertices() - 1))}})
 	if err != nil {

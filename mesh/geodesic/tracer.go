@@ -341,28 +341,23 @@ func (t *tracer) add(p [3]float64, triangle int32) {
 // line turns what was drawn round, source first, and leaves out stretches of no length.
 func (t *tracer) line() *Line {
 	line := &Line{Length: t.total, Several: t.several}
-	n := len(t.triangles)
-	for i := n - 1; i >= 0; i-- {
+	for i := len(t.triangles) - 1; i >= 0; i-- {
 		p := [3]float64(t.points[3*i : 3*i+3])
-		if k := len(line.S); k > 0 {
-			q := [3]float64(line.Points[3*k-3:])
-			step := math.Sqrt(square(p[0]-q[0]) + square(p[1]-q[1]) + square(p[2]-q[2]))
-			if step <= 1e-12*t.total {
-				if i > 0 {
-					line.Triangles[k-1] = t.triangles[i]
-				} else if k > 1 {
-					// The last point is the target's own place.
-					line.Points, line.S, line.Triangles = line.Points[:3*k-3], line.S[:k-1], line.Triangles[:k-1]
-					q = [3]float64(line.Points[3*k-6:])
-					step = math.Sqrt(square(p[0]-q[0]) + square(p[1]-q[1]) + square(p[2]-q[2]))
-					line.append(p, line.S[k-2]+step, -1)
-				}
+		k, s := len(line.S), 0.0
+		if k > 0 {
+			s = line.S[k-1] + distance(line.Points[3*k-3:], p[:])
+			switch {
+			case s-line.S[k-1] > 1e-12*t.total: // a stretch
+			case i > 0 || k == 1:
+				line.Triangles[k-1] = t.triangles[i]
 				continue
+			default: // the last point stays the target's own place
+				k--
+				line.Points, line.S, line.Triangles = line.Points[:3*k], line.S[:k], line.Triangles[:k]
+				s = line.S[k-1] + distance(line.Points[3*k-3:], p[:])
 			}
-			line.append(p, line.S[k-1]+step, t.triangles[i])
-			continue
 		}
-		line.append(p, 0, t.triangles[i])
+		line.append(p, s, t.triangles[i])
 	}
 	if k := len(line.Triangles); k > 1 {
 		line.Triangles[k-1] = line.Triangles[k-2]
@@ -376,4 +371,8 @@ func (l *Line) append(p [3]float64, s float64, triangle int32) {
 	l.Triangles = append(l.Triangles, triangle)
 }
 
-func square(x float64) float64 { return x * x }
+// distance is that of two points in space.
+func distance(p, q []float64) float64 {
+	x, y, z := p[0]-q[0], p[1]-q[1], p[2]-q[2]
+	return math.Sqrt(x*x + y*y + z*z)
+}

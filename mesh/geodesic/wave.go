@@ -72,9 +72,12 @@ type wave struct {
 }
 
 // Spread lets the wave run from the data over the mesh. The error is a *DatumError, a
-// *SizeError, a *MemoryError or ctx.Err(). Time is about that of 10 to 50 runs of Dijkstra's
-// algorithm along the edges; memory 50 bytes a triangle and 8 a vertex, plus 48 for
-// each window on the wave's front.
+// *SizeError, a *MemoryError or ctx.Err().
+//
+// Some 70 ns go by for each window that crosses a triangle: on a sphere of 20 000, 80 000
+// and 330 000 triangles 25, 50 and 97 a triangle, in all 15 to 30 times what Dijkstra's
+// algorithm takes along the edges; on flat parts two a triangle. Memory is 40 bytes a
+// triangle, and 48 for each window on the wave's front.
 func (s *Solver) Spread(ctx context.Context, data []mesh.Datum, opt Options) (*Wave, error) {
 	v, err := s.start(data, opt, false)
 	if err != nil {
