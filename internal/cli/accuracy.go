@@ -56,10 +56,16 @@ func (t *errorTarget) missed(estimate float64, vertices int, why string) error {
 }
 
 // percent is a relative error for reading, two digits of it.
-func percent(x float64) string {
-	const least = 1e-6
-	if x > 0 && x < least {
+func percent(x float64) string { return strconv.FormatFloat(100*x, 'g', 2, 64) + " %" }
+
+// roughly is percent without the digits of what is rounding, or as good as.
+func roughly(x float64) string {
+	const least, rounding = 1e-6, 1e-15
+	switch {
+	case x < rounding:
+		return "0 %"
+	case x < least:
 		return "below 0.0001 %"
 	}
-	return strconv.FormatFloat(100*x, 'g', 2, 64) + " %"
+	return percent(x)
 }

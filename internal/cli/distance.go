@@ -102,7 +102,7 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		if err != nil {
 			return err
 		}
-		content := resolution(evenly)
+		content := resolution(forDistance)
 		if ask.method == methodExact {
 			content = nil // its results do not depend on how flat faces are cut
 		}
@@ -170,7 +170,7 @@ func (s *distanceSummary) accuracy() string {
 	method := "no error on the flat triangles but rounding"
 	if s.Method != methodExact {
 		method = fmt.Sprintf("estimated error on the flat triangles: %s in the mean, %s at most",
-			percent(float64(s.EstimatedMeanError)), percent(float64(s.EstimatedMaxError)))
+			roughly(float64(s.EstimatedMeanError)), roughly(float64(s.EstimatedMaxError)))
 	}
-	return fmt.Sprintf("%s; the triangles against a curved part they may stand for (chord error): %s", method, percent(float64(s.ChordError)))
+	return fmt.Sprintf("%s; the triangles against a curved part they may stand for (chord error): %s", method, roughly(float64(s.ChordError)))
 }

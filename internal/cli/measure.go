@@ -32,7 +32,11 @@ func (q *distanceQuestion) answer(ctx context.Context, j *job, g *ground) (*dist
 	got := &distanceAnswer{}
 	var measure ruler = newExactRuler(j, g)
 	if q.method != methodExact {
-		heat, err := newHeatRuler(ctx, j, g, q.options, got)
+		options := q.options
+		if !q.keep {
+			options.Shown = g.original.NumVertices()
+		}
+		heat, err := newHeatRuler(ctx, j, g, options, got)
 		if err != nil {
 			return nil, err
 		}
