@@ -48,7 +48,6 @@ type tool struct {
 	candidates []candidate
 	values     []float32
 	axes       [6][3]float32 // of the piece that split has seen last
-	sample     []float32
 	counts     []int32
 }
 
@@ -215,8 +214,8 @@ func (d *dissector) grow(level []int32, start int32, queue []int32, tail, id int
 }
 
 // cut parts the connected piece [lo, hi), which split has just searched, into left, right and separator, in this order
-// in verts, and returns the sizes of the first two: 0 if the piece is better left whole. Cuts by several
-// planes and by breadth-first levels stand as candidates; large pieces try the best few with the flow.
+// in verts, and returns the sizes of the first two: 0 if the piece is better left whole. Three cuts stand as
+// candidates; large pieces try the best two with the flow.
 func (d *dissector) cut(t *tool, lo, hi int32) (left, right int32) {
 	verts, queue := d.verts[lo:hi], d.queue[lo:hi]
 	id := lo + 1
@@ -225,17 +224,9 @@ func (d *dissector) cut(t *tool, lo, hi int32) (left, right int32) {
 	width, at := levelCut(t, queue, d.level)
 	t.candidates = append(t.candidates, candidate{width: width, level: at, kind: byLevel})
 	if d.xyz != nil {
-		d.planeCuts(t, verts)
+		d.planeCut(t, verts)
 	}
-	if m >= severalSize || d.xyz == nil {
-		// The levels from the other end as well: where both distances differ by the same, the cut
-		// is straighter than along a level.
-		d.searchInto(d.other, queue[m-1], verts, queue, id)
-		for _, v := range verts {
-			d.other[v] = d.level[v] - d.other[v]
-		}
-		d.differenceCut(t, verts)
-	}
+	d.differenceCut(t, verts, queue, id)
 	for k := range t.candidates {
 		if c := &t.candidates[k]; c.kind != byLevel {
 			d.setSides(verts, *c)
@@ -357,8 +348,13 @@ func (d *dissector) border(verts []int32, id int32) float64 {
 	return penalty(float64(min(border[0], border[1])), float64(count[0])/float64(len(verts)))
 }
 
-// differenceCut adds the cut at the median of the differences.
-func (d *dissector) differenceCut(t *tool, verts []int32) {
+// differenceCut adds the cut along the line of equal distance, or nearly so, from both ends of the piece, which is
+// straighter than a level.
+func (d *dissector) differenceCut(t *tool, verts, queue []int32, id int32) {
+	d.searchInto(d.other, queue[len(queue)-1], verts, queue, id)
+	for _, v := range verts {
+		d.other[v] = d.level[v] - d.other[v]
+	}
 	least, most := d.other[verts[0]], d.other[verts[0]]
 	for _, v := range verts {
 		least, most = min(least, d.other[v]), max(most, d.other[v])
@@ -428,44 +424,32 @@ func (d *dissector) along(axis [3]float32, v int32) float32 {
 	return axis[0]*p[0] + axis[1]*p[1] + axis[2]*p[2]
 }
 
-// planeCuts adds two candidate cuts by planes through the median of the piece: across the direction in which the middle tenth
-// of its vertices is spread widest, so that a cut meets the fewest, and across the best of those at a wide angle to it,
-// which wins where triangles are stretched.
-func (d *dissector) planeCuts(t *tool, verts []int32) {
+// planeCut adds the cut by the plane through the median of the piece across the direction in which the middle tenth
+// of its vertices is spread widest, so that the cut meets the fewest.
+func (d *dissector) planeCut(t *tool, verts []int32) {
 	step := max(1, len(verts)/samples)
-	var spread [6]float32
-	best := 0
-	for a, axis := range t.axes {
-		t.sample = t.sample[:0]
+	var across [3]float32
+	widest := float32(0)
+	for _, axis := range t.axes {
+		t.values = t.values[:0]
 		for k := 0; k < len(verts); k += step {
-			t.sample = append(t.sample, d.along(axis, verts[k]))
+			t.values = append(t.values, d.along(axis, verts[k]))
 		}
-		n := len(t.sample)
-		spread[a] = quickSelect(t.sample, n*11/20) - quickSelect(t.sample, n*9/20)
-		if spread[a] > spread[best] {
-			best = a
-		}
-	}
-	second, widest := -1, float32(0)
-	for a, axis := range t.axes {
-		b := t.axes[best]
-		cos := axis[0]*b[0] + axis[1]*b[1] + axis[2]*b[2]
-		if spread[a] > widest && cos*cos < 0.5 {
-			second, widest = a, spread[a]
+		n := len(t.values)
+		if spread := quickSelect(t.values, n*11/20) - quickSelect(t.values, n*9/20); spread > widest {
+			across, widest = axis, spread
 		}
 	}
-	for _, a := range []int{best, second} {
-		if a < 0 || spread[a] <= 0 {
-			continue
-		}
-		t.values = resize(t.values, len(verts))
-		d.spans(verts, func(first int, verts []int32) {
-			for i, v := range verts {
-				t.values[first+i] = d.along(t.axes[a], v)
-			}
-		})
-		t.candidates = append(t.candidates, candidate{kind: byPlane, axis: t.axes[a], at: quickSelect(t.values, len(verts)/2)})
+	if widest == 0 {
+		return
 	}
+	t.values = resize(t.values, len(verts))
+	d.spans(verts, func(first int, verts []int32) {
+		for i, v := range verts {
+			t.values[first+i] = d.along(across, v)
+		}
+	})
+	t.candidates = append(t.candidates, candidate{kind: byPlane, axis: across, at: quickSelect(t.values, len(verts)/2)})
 }
 
 // axes returns the principal axes of some of the vertices, the longest first, then the coordinate axes, along which many parts are built.
