@@ -51,7 +51,9 @@ func sheet(nu, nv int, closedU, closedV bool, hole func(i, j int) bool, at func(
 // Entries of the factor against METIS 5.1.0 (METIS_NodeND with its default options, Debian 12), counted with this
 // package's columnCounts. A tenth more is the most we let the order cost.
 func TestFillAgainstMETIS(t *testing.T) {
-	circle := func(turns float64) (c, s float64) { return math.Cos(2 * math.Pi * turns), math.Sin(2 * math.Pi * turns) }
+	circle := func(turns float64) (c, s float64) {
+		return math.Cos(2 * math.Pi * turns), math.Sin(2 * math.Pi * turns)
+	}
 	plane := func(i, j float64) [3]float64 { return [3]float64{i, j, 0} }
 	for _, tc := range []struct {
 		name  string
