@@ -3,6 +3,7 @@ package geodesic
 import (
 	"math"
 	"slices"
+	"sort"
 )
 
 // lower sets the distance of a vertex to d, if that is less, and says so.
@@ -128,7 +129,12 @@ func (v *wave) receive(h int32, run envelope, thin float64) {
 		v.old = append(v.old, h)
 		return
 	}
-	have := v.pool.lists[i]
+	// Only what the run overlaps or touches has a part in it.
+	have := v.pool.lists[i].windows
+	begin, end := run[0].b0-beyond*thin, run[len(run)-1].b1+beyond*thin
+	lo := sort.Search(len(have), func(k int) bool { return have[k].b1 >= begin })
+	hi := lo + sort.Search(len(have)-lo, func(k int) bool { return have[lo+k].b0 > end })
+	have = have[lo:hi]
 	merged := v.merged[:0]
 	for len(have) > 0 || len(run) > 0 {
 		if len(run) == 0 || len(have) > 0 && have[0].b0 <= run[0].b0 {
@@ -140,7 +146,7 @@ func (v *wave) receive(h int32, run envelope, thin float64) {
 		}
 	}
 	v.merged = merged
-	v.pool.set(i, merged)
+	v.pool.splice(i, lo, hi, merged)
 }
 
 // cross carries the windows on h that have not been yet across its triangle.
@@ -155,7 +161,9 @@ func (v *wave) cross(h int32) {
 	right := v.gate(l.gateB, l.c, l.b, l.toB, &v.right)
 	watched := v.targets.faces != nil && v.targets.faces[h/3] != nil
 	slack, thin := slackShare*l.length, narrow*l.length
-	windows := v.pool.lists[v.list[h]-1]
+	list := &v.pool.lists[v.list[h]-1]
+	windows := list.windows[list.lo:list.hi]
+	list.lo, list.hi = 0, 0
 	for i := range windows {
 		w := &windows[i]
 		if w.flags&crossed != 0 {

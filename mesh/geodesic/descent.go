@@ -164,7 +164,7 @@ func (t *tracer) ways(best *way, triangle int32, weights [3]float64, except int3
 			continue
 		}
 		x, y := l.point(h, weights)
-		windows := t.pool.lists[t.list[h]-1]
+		windows := t.pool.lists[t.list[h]-1].windows
 		for i := range windows {
 			w := &windows[i]
 			foot, _ := w.hit(x, y)

@@ -8,7 +8,7 @@
 // whose nearest paths all cross the same triangles; unrolled into the plane they are
 // straight rays from one point. Windows spread from triangle to triangle, nearest
 // first; where two overlap on an edge, each keeps the part on which it is shorter.
-// Five things differ from that paper:
+// Four things differ from that paper:
 //
 //   - Windows wait by edge and cross a triangle together, in order, as a sorted list
 //     (after Y. Qin, X. Han, H. Yu, Y. Yu, J. Zhang, ACM Trans. Graph. 35(4), 2016, who

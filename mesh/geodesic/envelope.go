@@ -19,12 +19,14 @@ const (
 	// a flat vertex had split: they are joined again, or flat parts would fill up with
 	// windows. Of a real bend at the vertex not more than this is lost.
 	sameSource = 2e-14
+	// The crack between neighbours that are joined may be so many times narrow.
+	beyond = 100
 )
 
 // join makes one window of last and w, which begins where last ends, if both see one
 // source.
 func (last *window) join(w *window, thin float64) bool {
-	if last.flags != w.flags || w.b0-last.b1 > 100*thin {
+	if last.flags != w.flags || w.b0-last.b1 > beyond*thin {
 		return false
 	}
 	dx, dy, df := math.Abs(w.x-last.x), math.Abs(w.y-last.y), math.Abs(w.far-last.far)

@@ -8,11 +8,18 @@ import (
 // A pool holds the envelopes of the halfedges on the wave's front. They lie in blocks
 // of a power of two of windows, which are used again; the collector never sees them go.
 type pool struct {
-	lists  []envelope   // by number of the envelope
+	lists  []list
 	unused []int32      // numbers free for use
 	blocks [][]envelope // free blocks, by the logarithm of their size
 	fresh  envelope     // what is left of the newest slab
 	size   int64        // bytes of all slabs
+}
+
+// A list is the envelope of one halfedge; windows[lo:hi] holds all that still wait to
+// cross, and maybe others.
+type list struct {
+	windows envelope
+	lo, hi  int
 }
 
 const slabWindows = 1 << 12
@@ -51,32 +58,51 @@ func (p *pool) free(b envelope) {
 	}
 }
 
-// add makes a copy of e an envelope of its own and gives its number.
+// add makes a list of a copy of e, all of which waits, and gives its number.
 func (p *pool) add(e envelope) (i int32) {
 	if n := len(p.unused); n > 0 {
 		i = p.unused[n-1]
 		p.unused = p.unused[:n-1]
 	} else {
 		i = int32(len(p.lists))
-		p.lists = append(p.lists, nil)
+		p.lists = append(p.lists, list{})
 	}
-	p.set(i, e)
+	p.lists[i] = list{windows: append(p.block(len(e)), e...), hi: len(e)}
 	return i
 }
 
-// set makes a copy of e envelope i.
-func (p *pool) set(i int32, e envelope) {
-	b := p.lists[i]
-	if len(e) > cap(b) {
-		p.free(b)
-		b = p.block(len(e))
+// splice puts a copy of e in the place of windows lo to hi of list i.
+func (p *pool) splice(i int32, lo, hi int, e envelope) {
+	l := &p.lists[i]
+	more := len(e) - (hi - lo)
+	n := len(l.windows)
+	if n+more <= cap(l.windows) {
+		w := l.windows[:max(n, n+more)]
+		copy(w[hi+more:], w[hi:n])
+		copy(w[lo:], e)
+		l.windows = w[:n+more]
+	} else {
+		w := append(p.block(n+more), l.windows[:lo]...)
+		w = append(append(w, e...), l.windows[hi:]...)
+		p.free(l.windows)
+		l.windows = w
 	}
-	p.lists[i] = append(b[:0], e...)
+	first, last := lo, lo+len(e)
+	if l.lo < l.hi { // some waited already
+		if l.lo >= hi {
+			l.lo += more
+		}
+		if l.hi >= hi {
+			l.hi += more
+		}
+		first, last = min(first, l.lo), max(last, l.hi)
+	}
+	l.lo, l.hi = first, last
 }
 
-// drop forgets envelope i.
+// drop forgets list i.
 func (p *pool) drop(i int32) {
-	p.free(p.lists[i])
-	p.lists[i] = nil
+	p.free(p.lists[i].windows)
+	p.lists[i] = list{}
 	p.unused = append(p.unused, i)
 }

@@ -197,7 +197,7 @@ func (v *wave) bound(h int32) float64 {
 // weigh compares working memory with the limit.
 func (v *wave) weigh() error {
 	v.weighed = v.pool.size
-	bytes := v.fixed + v.pool.size + int64(cap(v.pool.lists))*32 + int64(cap(v.events))*16 + int64(cap(v.old))*4
+	bytes := v.fixed + v.pool.size + int64(cap(v.pool.lists))*48 + int64(cap(v.events))*16 + int64(cap(v.old))*4
 	v.peak = max(v.peak, bytes)
 	if v.opt.MaxBytes > 0 && bytes > v.opt.MaxBytes {
 		return &MemoryError{Bytes: bytes, Limit: v.opt.MaxBytes, Reach: v.now}
@@ -250,7 +250,7 @@ func (w *Wave) At(p mesh.Point) float64 {
 		}
 		l := v.lay(h)
 		x, y := l.point(h, p.Weights)
-		windows := v.pool.lists[v.list[h]-1]
+		windows := v.pool.lists[v.list[h]-1].windows
 		for i := range windows {
 			if s, ok := windows[i].straight(x, y, l.length); ok {
 				d = min(d, s)
