@@ -10,11 +10,11 @@ BENCH ?= .
 # Packages that hold assembly, or lean on it, run once more in plain Go.
 PUREGO := ./internal/dense ./internal/sparse ./kernel
 
-.PHONY: help build demo test bench fuzz lint clean
+.PHONY: help build demo test crosscheck bench fuzz lint clean
 .DEFAULT_GOAL := help
 
 help: ## list the targets
-	@sed -n 's/^\([a-z]*\):.*## \(.*\)/  make \1\t\2/p' $(MAKEFILE_LIST) | expand -t 16
+	@sed -n 's/^\([a-z]*\):.*## \(.*\)/  make \1\t\2/p' $(MAKEFILE_LIST) | expand -t 20
 
 build: ## build/heatskin
 	go build -trimpath -ldflags '-X heatskin/internal/cli.version=$(VERSION)' -o build/heatskin ./cmd/heatskin
@@ -40,6 +40,12 @@ test: ## every test, then those of the packages with assembly again in plain Go
 	go test ./...
 	go test -tags purego $(PUREGO)
 
+crosscheck: build ## matrices and results against SciPy, where Debian's python3-scipy is installed
+	@if /usr/bin/python3 -c 'import scipy' 2>/dev/null; then \
+	  mkdir -p build/crosscheck && go run ./testdata/crosscheck build/crosscheck && \
+	  /usr/bin/python3 testdata/crosscheck/crosscheck.py build/heatskin build/crosscheck; \
+	else echo "crosscheck: nothing was compared: /usr/bin/python3 has no SciPy (on Debian: apt-get install python3-scipy)"; fi
+
 bench: ## the benchmarks; BENCH=name picks some
 	go test -run '^$$' -bench '$(BENCH)' -benchmem ./...
 
@@ -54,8 +60,8 @@ fuzz: ## every fuzz target for FUZZTIME (10s) each
 lint: ## gofmt, go vet, staticcheck (pinned in go.mod)
 	@unformatted=$$(gofmt -l cmd internal kernel mesh testdata); \
 	  if [ -n "$$unformatted" ]; then echo "gofmt would change:"; echo "$$unformatted"; exit 1; fi
-	go vet ./...
-	go tool staticcheck ./...
+	go vet ./... ./testdata/crosscheck
+	go tool staticcheck ./... ./testdata/crosscheck
 
 clean: ## remove what was built
 	rm -rf build
