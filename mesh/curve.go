@@ -1,9 +1,6 @@
 package mesh
 
-import (
-	"math"
-	"runtime"
-)
+import "math"
 
 // alongCurve is m with its triangles in the order in which a Morton curve (G. Morton,
 // IBM technical report, 1966) passes them, and its vertices as the triangles name them
@@ -12,7 +9,7 @@ import (
 // work miss the cache, which costs two to four times the time from some 10^5 vertices
 // on. triangle and vertex are the numbers in m; vertices in no triangle are left out. O(n).
 func (m *Mesh) alongCurve() (local *Mesh, triangle, vertex []int32) {
-	triangle = sortedAlongCurve(m.Positions, m.Triangles)
+	triangle = m.sortedAlongCurve()
 	corners := make([]int32, len(m.Triangles))
 	eachBlock(len(triangle), func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
@@ -33,14 +30,14 @@ func (m *Mesh) alongCurve() (local *Mesh, triangle, vertex []int32) {
 // sortedAlongCurve lists triangles in the order in which a Morton curve passes their
 // centres; triangles of one place keep their order. O(n), more where density varies by
 // many orders of magnitude.
-func sortedAlongCurve(x []float64, triangles []int32) (order []int32) {
-	items := make([]uint64, len(triangles)/3) // place on the curve << 32 | triangle
+func (m *Mesh) sortedAlongCurve() (order []int32) {
+	items := make([]uint64, m.NumTriangles()) // place on the curve << 32 | triangle
 	eachBlock(len(items), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			items[f] = uint64(f)
 		}
 	})
-	sortAlongCurve(items, make([]uint64, len(items)), x, triangles)
+	m.sortAlongCurve(items, make([]uint64, len(items)), m.box())
 	order = make([]int32, len(items))
 	eachBlock(len(items), func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
@@ -51,43 +48,23 @@ func sortedAlongCurve(x []float64, triangles []int32) (order []int32) {
 }
 
 const (
-	curveBits  = 10  // of each coordinate: a grid of 1024³ cells
-	crowdedRun = 256 // more triangles than this in one cell get a grid of their own
+	curveBits  = digitBits // of each coordinate: a grid of 1024³ cells
+	crowdedRun = 256       // more triangles than this in one cell get a grid of their own
 )
 
-// sortAlongCurve sorts items, whose lower halves are triangles.
-func sortAlongCurve(items, scratch []uint64, x []float64, triangles []int32) {
-	centre := func(item uint64) (c [3]float64) { // thrice the centre, to be exact
-		t := triangles[3*uint32(item):][:3]
-		for axis := range c {
-			c[axis] = x[3*int(t[0])+axis] + x[3*int(t[1])+axis] + x[3*int(t[2])+axis]
-		}
-		return c
-	}
-	blocks := make([]box3, numBlocks(len(items)))
-	eachBlock(len(items), func(block, lo, hi int) {
-		b := noBox()
-		for _, item := range items[lo:hi] {
-			b.add(centre(item))
-		}
-		blocks[block] = b
-	})
-	box := noBox()
-	for _, b := range blocks {
-		box.add(b.lo)
-		box.add(b.hi)
-	}
+// sortAlongCurve sorts items, whose lower halves are triangles in the box.
+func (m *Mesh) sortAlongCurve(items, scratch []uint64, box box3) {
 	size := box.size()
-	if !(size > 0) {
+	if !(size > 1e-300) {
 		return
 	}
 	scale := math.Nextafter(1<<curveBits, 0) / size
 	eachBlock(len(items), func(_, lo, hi int) {
 		for i, item := range items[lo:hi] {
 			place := uint64(0)
-			for axis, c := range centre(item) {
-				cell := min(uint64((c-box.lo[axis])*scale), 1<<curveBits-1)
-				place |= spread3(cell) << axis
+			for axis, c := range m.centre(item) {
+				cell := min(max((c-box.lo[axis])*scale, 0), 1<<curveBits-1) // rounding
+				place |= spread3(uint64(cell)) << axis
 			}
 			items[lo+i] = place<<32 | uint64(uint32(item))
 		}
@@ -99,10 +76,24 @@ func sortAlongCurve(items, scratch []uint64, x []float64, triangles []int32) {
 			j++
 		}
 		if j-i > crowdedRun {
-			sortAlongCurve(items[i:j], scratch[:j-i], x, triangles)
+			around := noBox()
+			for _, item := range items[i:j] {
+				around.add(m.centre(item))
+			}
+			m.sortAlongCurve(items[i:j], scratch[:j-i], around)
 		}
 		i = j
 	}
+}
+
+// centre is that of the triangle of an item.
+func (m *Mesh) centre(item uint64) (c [3]float64) {
+	t := m.Triangles[3*uint32(item):][:3]
+	p, q, r := point3(m.Positions, t[0]), point3(m.Positions, t[1]), point3(m.Positions, t[2])
+	for axis := range c {
+		c[axis] = p[axis]/3 + q[axis]/3 + r[axis]/3
+	}
+	return c
 }
 
 // spread3 puts two zeros before each of the ten bits of c.
@@ -111,49 +102,6 @@ func spread3(c uint64) uint64 {
 	c = (c | c<<8) & 0x300f00f
 	c = (c | c<<4) & 0x30c30c3
 	return (c | c<<2) & 0x9249249
-}
-
-// radixSort sorts items by their upper halves, below 1<<30, and keeps the order of
-// equal ones. scratch is as long as items. Each goroutine counts, and then moves, a
-// stretch of its own: three passes of ten bits.
-func radixSort(items, scratch []uint64) {
-	const digits = 1 << 10
-	parts := 1
-	if len(items) > 4*digits {
-		parts = runtime.GOMAXPROCS(0)
-	}
-	stretch := func(part int) (lo, hi int) { return len(items) * part / parts, len(items) * (part + 1) / parts }
-	place := make([][digits]int, parts)
-	from, to := items, scratch
-	for shift := 32; shift < 62; shift += 10 {
-		eachPart(parts, func(part int) {
-			count := &place[part]
-			clear(count[:])
-			lo, hi := stretch(part)
-			for _, item := range from[lo:hi] {
-				count[item>>shift%digits]++
-			}
-		})
-		total := 0
-		for digit := range digits {
-			for part := range parts {
-				count := place[part][digit]
-				place[part][digit] = total
-				total += count
-			}
-		}
-		eachPart(parts, func(part int) {
-			at := &place[part]
-			lo, hi := stretch(part)
-			for _, item := range from[lo:hi] {
-				digit := item >> shift % digits
-				to[at[digit]] = item
-				at[digit]++
-			}
-		})
-		from, to = to, from
-	}
-	copy(items, from) // three passes have ended in scratch
 }
 
 type box3 struct{ lo, hi [3]float64 }

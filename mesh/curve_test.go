@@ -15,7 +15,7 @@ import (
 func TestCurveKeepsNeighboursTogether(t *testing.T) {
 	for _, crowd := range []float64{1, 1e-5} { // all evenly, and one half in a far corner
 		x, triangles := randomTriangles(1<<14, crowd)
-		order := sortedAlongCurve(x, triangles)
+		order := (&Mesh{Positions: x, Triangles: triangles}).sortedAlongCurve()
 		if !slices.Equal(slices.Sorted(slices.Values(order)), ascending(len(order))) {
 			t.Fatal("the order is no permutation")
 		}

@@ -165,18 +165,20 @@ func (s *Surface) Renumbered() (r *Surface, vertex []int32) {
 }
 
 func (m *Mesh) checkRange() error {
-	blocks := make([]box3, numBlocks(len(m.Triangles)))
-	eachBlock(len(m.Triangles), func(block, lo, hi int) {
-		b := noBox()
-		for _, v := range m.Triangles[lo:hi] {
-			b.add(point3(m.Positions, v))
+	// In sane files the first corner off the origin and a look at all vertices, in their
+	// order, will do; vertices in no triangle do not count.
+	for _, v := range m.Triangles {
+		if p := point3(m.Positions, v); max(math.Abs(p[0]), math.Abs(p[1]), math.Abs(p[2])) >= 1e-140 {
+			box := m.box()
+			if min(box.lo[0], box.lo[1], box.lo[2]) >= -0.5e140 && max(box.hi[0], box.hi[1], box.hi[2]) <= 0.5e140 {
+				return nil
+			}
+			break
 		}
-		blocks[block] = b
-	})
+	}
 	box := noBox()
-	for _, b := range blocks {
-		box.add(b.lo)
-		box.add(b.hi)
+	for _, v := range m.Triangles {
+		box.add(point3(m.Positions, v))
 	}
 	size := box.size()
 	for axis := range box.lo {
@@ -186,6 +188,24 @@ func (m *Mesh) checkRange() error {
 		return &RangeError{Size: size}
 	}
 	return nil
+}
+
+// box is that of all vertices.
+func (m *Mesh) box() box3 {
+	blocks := make([]box3, numBlocks(m.NumVertices()))
+	eachBlock(m.NumVertices(), func(block, lo, hi int) {
+		b := noBox()
+		for v := lo; v < hi; v++ {
+			b.add(point3(m.Positions, int32(v)))
+		}
+		blocks[block] = b
+	})
+	box := noBox()
+	for _, b := range blocks {
+		box.add(b.lo)
+		box.add(b.hi)
+	}
+	return box
 }
 
 // keepFaces chooses the triangles that make up the surface, given the corners of all,

@@ -29,57 +29,69 @@ func (m *Mesh) Weld(tolerance float64) *Mesh {
 }
 
 // weldExactly appends the distinct points of x to dst, in order of appearance, and
-// sets number[i] to the place that point i got there. dst may be x[:0]. It is a hash
-// table with open addressing; the hash is salted, so that no file can be made to
-// collide in it, and the result does not depend on the salt.
+// sets number[i] to the place that point i got there. dst may be x[:0].
 func weldExactly(number []int32, x, dst []float64) []float64 {
-	// A slot holds the upper half of a hash and, below it, a place in dst plus 1.
-	// The slot's number is made of the hash's first bits: a larger table is filled
-	// without reading the points again.
-	size := bits.Len(uint(max(len(number)/2, 512)))
-	table := make([]uint64, 1<<size)
-	room := len(table) / 8 * 5
-	salt := [3]uint64{rand.Uint64() | 1, rand.Uint64() | 1, rand.Uint64() | 1}
-	count := 0
-	for i := range number {
-		p := (*[3]float64)(x[3*i:])
-		a, b, c := p[0]+0, p[1]+0, p[2]+0 // -0 becomes 0
-		hi, lo := bits.Mul64(math.Float64bits(a)^salt[0], math.Float64bits(b)^salt[1])
-		hi, lo = bits.Mul64(hi^lo^math.Float64bits(c), salt[2])
-		hash := (hi ^ lo) >> 32
-		for slot := hash >> (32 - size); ; slot = (slot + 1) & uint64(len(table)-1) {
-			entry := table[slot]
-			if entry == 0 {
-				table[slot] = hash<<32 | uint64(count+1)
-				dst = append(dst, a, b, c)
-				number[i] = int32(count)
-				count++
-				break
-			}
-			if entry>>32 == hash {
-				j := int(uint32(entry)) - 1
-				if q := (*[3]float64)(dst[3*j:]); q[0] == a && q[1] == b && q[2] == c {
-					number[i] = int32(j)
-					break
-				}
-			}
+	firstOfEach(number, x)
+	count := int32(0)
+	for i, first := range number {
+		if int(first) < i {
+			number[i] = number[first]
+			continue
 		}
-		if count > room {
-			size++
-			grown := make([]uint64, 1<<size)
-			for _, entry := range table {
-				if entry != 0 {
-					slot := entry >> 32 >> (32 - size)
-					for grown[slot] != 0 {
-						slot = (slot + 1) & uint64(len(grown)-1)
-					}
-					grown[slot] = entry
-				}
-			}
-			table, room = grown, len(grown)/8*5
-		}
+		p := pointAt(x, i)
+		dst = append(dst, p[0], p[1], p[2])
+		number[i] = count
+		count++
 	}
 	return dst
+}
+
+// firstOfEach sets first[i] to the first point of x that is equal to point i. Points
+// are dealt out by a hash, and each of the heaps has a small table of its own: many
+// goroutines can work, and each finds its table in the cache. The hash is salted, so
+// that no file can be made to collide in it; the result does not depend on the salt.
+func firstOfEach(first []int32, x []float64) {
+	salt := [3]uint64{rand.Uint64() | 1, rand.Uint64() | 1, rand.Uint64() | 1}
+	items := make([]uint64, len(first)) // hash << 32 | point
+	start := distribute(items, 64-digitBits, func(i int) uint64 {
+		p := pointAt(x, i)
+		hi, lo := bits.Mul64(math.Float64bits(p[0])^salt[0], math.Float64bits(p[1])^salt[1])
+		hi, lo = bits.Mul64(hi^lo^math.Float64bits(p[2]), salt[2])
+		return (hi^lo)>>32<<32 | uint64(i)
+	})
+	const together = 16 // heaps that one goroutine takes, so that it makes its table once
+	eachPart(digits/together, func(part int) {
+		var table []uint32 // by the hash's last bits: a number in points, plus 1
+		var points [][3]float64
+		var firsts []int32
+		for heap := part * together; heap < (part+1)*together; heap++ {
+			mine := items[start[heap]:start[heap+1]]
+			if size := 2 << bits.Len(uint(len(mine))); size > len(table) {
+				table = make([]uint32, size)
+			}
+			clear(table)
+			points, firsts = points[:0], firsts[:0]
+			for _, item := range mine {
+				i := int32(uint32(item))
+				p := pointAt(x, int(i))
+				slot := item >> 32 & uint64(len(table)-1)
+				for table[slot] != 0 && points[table[slot]-1] != p {
+					slot = (slot + 1) & uint64(len(table)-1)
+				}
+				if table[slot] == 0 {
+					points, firsts = append(points, p), append(firsts, i)
+					table[slot] = uint32(len(points))
+				}
+				first[i] = firsts[table[slot]-1]
+			}
+		}
+	})
+}
+
+// pointAt is point i of x, with 0 for -0.
+func pointAt(x []float64, i int) [3]float64 {
+	p := (*[3]float64)(x[3*i:])
+	return [3]float64{p[0] + 0, p[1] + 0, p[2] + 0}
 }
 
 // weldNear joins the points of x within tolerance of each other, puts the first of
