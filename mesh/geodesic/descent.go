@@ -1,10 +1,6 @@
 package geodesic
 
-import (
-	"math"
-
-	"heatskin/mesh"
-)
+import "math"
 
 // descend follows the line from its arrival like trace, but asks the windows on the
 // way instead of the ruler: wherever it stands it takes the shortest way that leads
@@ -33,7 +29,7 @@ func (t *tracer) descend(a *arrival) (ok bool) {
 			return true
 		}
 		best := t.nextWay(&stand)
-		if math.IsInf(best.length, 1) || best.length > left+beside*t.total {
+		if math.IsInf(best.length, 1) || best.length > left+t.eps {
 			return false
 		}
 		left = best.length
@@ -96,7 +92,7 @@ func (t *tracer) arrived(s *stance) bool {
 		if t.mesh.Triangles[p] != t.mesh.Triangles[s.h] {
 			u = l.length - u
 		}
-		if d, ok := t.sourceIn(p, &l, u, 0, beside*t.total); ok {
+		if d, ok := t.sourceIn(p, &l, u, 0, t.eps); ok {
 			t.source = d
 			return true
 		}
@@ -142,7 +138,7 @@ func (t *tracer) nextWay(s *stance) way {
 // leads on. Where all is in one place only that keeps it from walking in circles, and
 // that it goes through no vertex and no edge twice.
 func (t *tracer) ways(best *way, triangle int32, weights [3]float64, except int32) {
-	even := 1e-13 * t.total
+	even := 1e-4 * t.eps
 	for k := range int32(3) {
 		v := t.mesh.Triangles[3*triangle+k]
 		if d := t.distance[v] + t.toCorner(triangle, weights, k) - even; d < best.length && !t.passed[v] {
@@ -150,9 +146,8 @@ func (t *tracer) ways(best *way, triangle int32, weights [3]float64, except int3
 		}
 	}
 	for _, p := range t.wave.points[triangle] {
-		if d := t.apart(triangle, weights, p.weights) - even; d < best.length {
-			place := t.mesh.Position(mesh.Point{Triangle: triangle, Weights: p.weights})
-			*best = way{length: d, triangle: triangle, vertex: -1, gate: -1, source: int(p.datum), place: place}
+		if d := t.apart(triangle, weights, p.Weights) - even; d < best.length {
+			*best = way{length: d, triangle: triangle, vertex: -1, gate: -1, source: int(p.datum), place: t.mesh.Position(p.Point)}
 		}
 	}
 	for h := 3 * triangle; h < 3*triangle+3; h++ {

@@ -57,6 +57,7 @@ func (s *Solver) path(ctx context.Context, from []mesh.Datum, opt Options) (*Lin
 		return nil, nil
 	}
 	t := tracer{wave: v, total: best.distance, several: several}
+	t.eps = beside * max(t.total, 1e-6*v.extent)
 	follow := t.trace
 	if opt.Keep {
 		follow = t.descend
@@ -66,7 +67,7 @@ func (s *Solver) path(ctx context.Context, from []mesh.Datum, opt Options) (*Lin
 	}
 	line := t.line()
 	line.From, line.To = t.source, best.target
-	if n := len(line.S); math.Abs(line.S[n-1]-line.Length) > 1e-9*line.Length {
+	if n := len(line.S); math.Abs(line.S[n-1]-line.Length) > 1e-9*line.Length+1e-15*v.extent {
 		return nil, &TraceError{Distance: line.Length, Length: line.S[n-1]}
 	}
 	return line, nil
@@ -142,9 +143,9 @@ func (v *wave) choose() (best arrival, several bool) {
 			}
 			for _, source := range v.points[t.triangle] {
 				a := none
-				a.distance = v.apart(t.triangle, t.weights, source.weights)
+				a.distance = v.apart(t.triangle, t.weights, source.Weights)
 				a.place, a.triangle, a.datum = place, t.triangle, source.datum
-				a.source = v.mesh.Position(mesh.Point{Triangle: t.triangle, Weights: source.weights})
+				a.source = v.mesh.Position(source.Point)
 				a.direction = unit(place, a.source)
 				keep(a)
 			}

@@ -3,17 +3,20 @@ package geodesic
 import "math"
 
 // A parent tells how the shortest way comes to a vertex: straight through a window,
-// along an edge, or not at all because the vertex is a source.
+// along an edge, from a source point in a triangle at the vertex, or not at all
+// because the vertex is a source.
 type parent struct {
 	h       int32 // through h into the triangle that has the vertex as its apex, or -1
-	from    int32 // if h is -1: along the edge from this vertex, or -1 at a source
+	from    int32 // if h is -1: the vertex, or firstPoint minus the number of the source point, or -1
 	several bool  // another way is equally short
 	window  window
 }
 
+const firstPoint = -2
+
 // throughWindow offers the apex of h's triangle the straight way through w.
 func (v *wave) throughWindow(h int32, l *layout, w *window) {
-	d := w.to(l.x, l.y)
+	d := max(w.to(l.x, l.y), 0)
 	if !v.lines {
 		v.lower(l.c, d)
 	} else {
@@ -59,12 +62,18 @@ func alike(a, b [3]float64) bool {
 
 // direction is the unit vector in space from vertex back along the way of p.
 func (v *wave) direction(vertex int32, p *parent) [3]float64 {
+	if math.IsInf(v.distance[vertex], 1) {
+		return [3]float64{} // p is of an earlier wave
+	}
 	if p.h >= 0 {
 		l := v.lay(p.h)
 		return v.backwards(&l, &p.window, l.x, l.y)
 	}
 	if p.from >= 0 {
 		return unit(v.position(vertex), v.position(p.from))
+	}
+	if p.from <= firstPoint {
+		return unit(v.position(vertex), v.mesh.Position(v.pointList[firstPoint-p.from].Point))
 	}
 	return [3]float64{}
 }

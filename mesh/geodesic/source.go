@@ -9,8 +9,8 @@ import (
 
 // A sourcePoint is a source inside a triangle or on its rim.
 type sourcePoint struct {
-	weights [3]float64
-	datum   int32
+	mesh.Point
+	datum int32
 }
 
 // atCorner is the weight from which a point counts as the corner itself.
@@ -28,7 +28,7 @@ func (v *wave) source(data []mesh.Datum) error {
 			v.sourceVertex(place.vertex, int32(i))
 		}
 		if place.triangle >= 0 {
-			v.sourcePoint(place.triangle, place.weights, int32(i))
+			v.sourcePoint(mesh.Point{Triangle: place.triangle, Weights: place.weights}, int32(i))
 		}
 		for _, h := range place.edges {
 			v.sourceEdge(h, int32(i))
@@ -143,27 +143,25 @@ func (v *wave) sourceVertex(vertex, datum int32) {
 	}
 }
 
-// sourcePoint sends rays out of triangle t across its three edges.
-func (v *wave) sourcePoint(t int32, weights [3]float64, datum int32) {
-	v.points[t] = append(v.points[t], sourcePoint{weights, datum})
-	for h := 3 * t; h < 3*t+3; h++ {
-		l := v.lay(h)
-		if l.degenerate {
-			continue
-		}
-		x, y := l.point(h, weights)
-		w := window{b1: l.length, x: x, y: -y}
-		if d := w.to(l.x, l.y); v.lower(l.c, d) && v.lines {
-			v.parents[l.c] = parent{h: h, from: -1, window: w}
+// sourcePoint sends rays out of the point's triangle across its three edges.
+func (v *wave) sourcePoint(p mesh.Point, datum int32) {
+	t := p.Triangle
+	number := int32(len(v.pointList))
+	v.pointList = append(v.pointList, sourcePoint{p, datum})
+	v.points[t] = append(v.points[t], sourcePoint{p, datum})
+	for k := range int32(3) {
+		vertex, d := v.mesh.Triangles[3*t+k], v.toCorner(t, p.Weights, k)
+		if v.lines {
+			v.offer(vertex, d, parent{h: -1, from: firstPoint - number})
+		} else {
+			v.lower(vertex, d)
 		}
 	}
 	for h := 3 * t; h < 3*t+3; h++ {
-		l := v.lay(h)
-		if l.degenerate {
-			continue
+		if l := v.lay(h); !l.degenerate {
+			x, y := l.point(h, p.Weights)
+			v.emitWhole(h, &l, window{b1: l.length, x: x, y: y})
 		}
-		x, y := l.point(h, weights)
-		v.emitWhole(h, &l, window{b1: l.length, x: x, y: y})
 	}
 }
 

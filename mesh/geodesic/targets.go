@@ -106,7 +106,7 @@ func (v *wave) targetDistance(i int) float64 {
 			d = min(d, v.distance[v.mesh.Triangles[3*t.triangle+k]]+v.toCorner(t.triangle, t.weights, k))
 		}
 		for _, p := range v.points[t.triangle] {
-			d = min(d, v.apart(t.triangle, t.weights, p.weights))
+			d = min(d, v.apart(t.triangle, t.weights, p.Weights))
 		}
 		return d
 	}
@@ -159,7 +159,7 @@ func (w *window) straight(x, y, length float64) (float64, bool) {
 		}
 		foot = x
 	}
-	return w.to(x, y), foot >= w.b0-slack && foot <= w.b1+slack
+	return max(w.to(x, y), 0), foot >= w.b0-slack && foot <= w.b1+slack
 }
 
 // hitFace notes how near w, which comes in through h, brings the targets in the triangle.
@@ -181,7 +181,7 @@ func (v *wave) hitEdge(g *gate, w *window) {
 			out = w.turned(g.length)
 		}
 		t := out.nearest()
-		v.note(&v.targets.list[i], hit{distance: out.at(t), h: g.h, window: out, x: t, leaves: true})
+		v.note(&v.targets.list[i], hit{distance: max(out.at(t), 0), h: g.h, window: out, x: t, leaves: true})
 	}
 }
 

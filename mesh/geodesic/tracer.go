@@ -5,7 +5,8 @@ import "math"
 // A tracer draws a line from its target back to the source.
 type tracer struct {
 	*wave
-	total     float64 // length of the whole line, the scale of its tolerances
+	total     float64 // length of the whole line
+	eps       float64 // what counts as beside a place
 	several   bool
 	source    int       // the datum where it ended
 	points    []float64 // from the target on
@@ -16,9 +17,9 @@ type tracer struct {
 }
 
 const (
-	// A vertex nearer to a straight line than this (of its length), by way of which the
-	// distance is the same, is taken for a point of the line; and a source nearer to the
-	// line's calculated end is taken for it.
+	// A vertex nearer to a straight line than this (of its length, but not less than an
+	// ulp or so of the mesh), by way of which the distance is the same, is taken for a
+	// point of the line; and a source nearer to the line's calculated end is taken for it.
 	beside = 1e-9
 	// maxForks bounds how often a line tries another way at a doubtful place.
 	maxForks = 4096
@@ -61,6 +62,11 @@ func (t *tracer) fromVertex(vertex int32) bool {
 		case p.from >= 0:
 			t.add(t.position(p.from), t.along(vertex, p.from))
 			vertex = p.from
+		case p.from <= firstPoint:
+			source := &t.pointList[firstPoint-p.from]
+			t.add(t.mesh.Position(source.Point), source.Triangle)
+			t.source = int(source.datum)
+			return true
 		default:
 			t.source = int(t.sourceVertices[vertex])
 			return true
@@ -111,12 +117,6 @@ func (t *tracer) fromHit(h *hit) (vertex int32, ok bool) {
 		x, y, far = h.x-d*w.x, h.y-d*gy, 0
 	}
 	l := t.lay(h.h)
-	if !h.leaves && y > beside*t.total { // a source in the same triangle
-		d, ok := t.sourceIn(h.h, &l, x, y, beside*t.total)
-		t.add(t.inSpace(&l, x, y), h.h/3)
-		t.source = d
-		return -1, ok
-	}
 	var open []sight
 	if h.leaves {
 		open = append(open, sight{h: h.h, t: h.x, x: x, y: max(y, 0), points: len(t.triangles)})
@@ -170,7 +170,7 @@ func (t *tracer) step(s *sight, far float64, open *[]sight) (end bool, vertex in
 	if l.degenerate {
 		return false, -1, false
 	}
-	eps := beside * t.total
+	eps := t.eps
 	dx, dy := s.x-s.t, s.y
 	left := math.Hypot(dx, dy)
 	toVertex := func(v int32) (bool, int32, bool) {
@@ -270,7 +270,7 @@ func edgeCross(arm, p, q, ux, uy, length float64) float64 {
 // endOnEdge tells whether a line that stands on h at u with left still to go has
 // arrived: at an end of h, or at a source on it.
 func (t *tracer) endOnEdge(h int32, u, length, left, far float64) (vertex int32, ok bool) {
-	eps := beside * t.total
+	eps := t.eps
 	ends := [2]int32{t.mesh.Triangles[h], t.mesh.Triangles[following(h)]}
 	for k, v := range ends {
 		gap := u
@@ -304,7 +304,7 @@ func (t *tracer) endOnEdge(h int32, u, length, left, far float64) (vertex int32,
 // sourceIn finds the source at (x, y) in the triangle of h, or on its edges.
 func (t *tracer) sourceIn(h int32, l *layout, x, y, eps float64) (datum int, ok bool) {
 	for _, p := range t.wave.points[h/3] {
-		px, py := l.point(h, p.weights)
+		px, py := l.point(h, p.Weights)
 		if math.Hypot(px-x, py-y) <= eps {
 			return int(p.datum), true
 		}
@@ -323,7 +323,7 @@ func (t *tracer) sourceIn(h int32, l *layout, x, y, eps float64) (datum int, ok 
 		// A source point on the edge may be given in the triangle across.
 		for p := t.glue[e.h]; e.gap <= eps && p != e.h; p = t.glue[p] {
 			for _, q := range t.wave.points[p/3] {
-				if q.weights[(p+2)%3] == 0 {
+				if q.Weights[(p+2)%3] == 0 {
 					return int(q.datum), true
 				}
 			}
@@ -347,7 +347,7 @@ func (t *tracer) line() *Line {
 		if k > 0 {
 			s = line.S[k-1] + distance(line.Points[3*k-3:], p[:])
 			switch {
-			case s-line.S[k-1] > 1e-12*t.total: // a stretch
+			case s-line.S[k-1] > 1e-3*t.eps: // a stretch
 			case i > 0 || k == 1:
 				line.Triangles[k-1] = t.triangles[i]
 				continue

@@ -64,8 +64,9 @@ type wave struct {
 
 	left, right, merged, spare envelope // scratch
 
-	points  map[int32][]sourcePoint // source points by triangle
-	targets targets
+	pointList []sourcePoint
+	points    map[int32][]sourcePoint // the same by triangle
+	targets   targets
 
 	// If lines are to be drawn: which source a vertex or a halfedge is.
 	sourceVertices, sourceHalfedges map[int32]int32
@@ -242,7 +243,7 @@ func (w *Wave) At(p mesh.Point) float64 {
 		d = min(d, w.Distances[v.mesh.Triangles[3*p.Triangle+k]]+v.toCorner(p.Triangle, p.Weights, k))
 	}
 	for _, q := range v.points[p.Triangle] {
-		d = min(d, v.apart(p.Triangle, p.Weights, q.weights))
+		d = min(d, v.apart(p.Triangle, p.Weights, q.Weights))
 	}
 	for h := 3 * p.Triangle; h < 3*p.Triangle+3; h++ {
 		if v.list[h] == 0 {
