@@ -1,6 +1,9 @@
 package sparse
 
-import "slices"
+import (
+	"cmp"
+	"slices"
+)
 
 // A supernode is a run of columns of L that are stored as one dense trapezoid: w columns, and
 // m rows of which the first w are the columns themselves.
@@ -20,82 +23,81 @@ func frontCost(w, m int64) float64 {
 	return 100 + 4*float64(factorSize(w, m)) + 0.8*float64(r*r) + 0.03*flops
 }
 
+// A group is a supernode in the making: its own columns are post[begin:end], and it may take in others.
+type group struct {
+	cost           float64
+	w, m           int32
+	parent         int32
+	begin, end     int32
+	merged         int32 // first of the groups taken in, further ones by next
+	next           int32
+	child, sibling int32 // first child that is not taken in, next child of the same parent
+}
+
 // supernodes groups the columns, listed in postorder, into supernodes and returns the new order of
 // the columns: order[k] is the column, in the old numbering, that comes k-th. Columns join when
 // their structures are the same but for the diagonal; then each parent takes in those children with
 // which it costs less than apart (after C. Ashcraft and R. Grimes, ACM Trans. Math. Softw.
 // 15(4), 1989, pp. 291–309, who bound the number of zeros instead).
 func supernodes(parent, post, count []int32) (nodes []supernode, order []int32) {
-	n := len(post)
-	owner := make([]int32, n) // of each column, by its old number
-	type group struct {
-		w, m         int64
-		parent       int32
-		cost         float64
-		begin, end   int32 // own columns in post
-		merged, tail int32 // list of groups taken in, by next
-		next         int32
+	owner := make([]int32, len(post)) // of each column, by its old number
+	joins := func(k int) bool { // post[k] and the column before it
+		i, j := post[k-1], post[k]
+		return parent[i] == j && count[i] == count[j]+1
 	}
-	groups := make([]group, 0, n/2+1)
+	number := 0
+	for k := range post {
+		if k == 0 || !joins(k) {
+			number++
+		}
+	}
+	groups := make([]group, 0, number)
 	for k, j := range post {
-		if k > 0 {
-			i := post[k-1]
-			if parent[i] == j && count[i] == count[j]+1 {
-				owner[j] = owner[i]
-				groups[owner[i]].end = int32(k + 1)
-				continue
-			}
+		if k > 0 && joins(k) {
+			owner[j] = owner[post[k-1]]
+			groups[owner[j]].end = int32(k + 1)
+			continue
 		}
 		owner[j] = int32(len(groups))
-		groups = append(groups, group{begin: int32(k), end: int32(k + 1), merged: -1, tail: -1, next: -1, m: int64(count[j])})
+		groups = append(groups, group{begin: int32(k), end: int32(k + 1), merged: -1, next: -1, child: -1, m: count[j]})
 	}
-	head := make([]int32, len(groups)) // children, in descending order
-	sibling := make([]int32, len(groups))
 	for s := range groups {
 		g := &groups[s]
-		g.w = int64(g.end - g.begin)
-		g.cost = frontCost(g.w, g.m)
+		g.w = g.end - g.begin
+		g.cost = frontCost(int64(g.w), int64(g.m))
 		g.parent = -1
 		if q := parent[post[g.end-1]]; q >= 0 {
 			g.parent = owner[q]
-		}
-		head[s] = -1
-	}
-	for s := range groups {
-		if q := groups[s].parent; q >= 0 {
-			sibling[s] = head[q]
-			head[q] = int32(s)
+			g.sibling = groups[g.parent].child
+			groups[g.parent].child = int32(s)
 		}
 	}
-	gone := make([]bool, len(groups))
 	for s := range groups {
 		g := &groups[s]
 		var kept int32 = -1
-		for c := head[s]; c >= 0; {
-			next := sibling[c]
+		for c := g.child; c >= 0; {
 			h := &groups[c]
-			if together := frontCost(g.w+h.w, g.m+h.w); together <= g.cost+h.cost {
+			next := h.sibling
+			if together := frontCost(int64(g.w+h.w), int64(g.m+h.w)); together <= g.cost+h.cost {
 				g.w, g.m, g.cost = g.w+h.w, g.m+h.w, together
-				gone[c] = true
 				h.next = g.merged // lists grow at the head: children come before the columns of s
 				g.merged = c
-				for d := head[c]; d >= 0; { // grandchildren become children, not tried again
-					after := sibling[d]
-					sibling[d] = kept
-					kept = d
-					d = after
+				for d := h.child; d >= 0; { // grandchildren become children, not tried again
+					groups[d].sibling, kept, d = kept, d, groups[d].sibling
 				}
 			} else {
-				sibling[c] = kept
-				kept = c
+				h.sibling, kept = kept, c
 			}
 			c = next
 		}
-		head[s] = kept
+		g.child = kept
 	}
+	return layOut(groups, post)
+}
 
-	// Lay the groups out in postorder, children with the larger update matrices first,
-	// so that less lies waiting on the stack.
+// layOut numbers groups in postorder, children with the larger update matrices first, so that less lies waiting
+// on the stack, and lists their columns.
+func layOut(groups []group, post []int32) (nodes []supernode, order []int32) {
 	parentOf := make([]int32, len(groups))
 	for s := range groups {
 		parentOf[s] = -1
@@ -109,21 +111,18 @@ func supernodes(parent, post, count []int32) (nodes []supernode, order []int32) 
 	var pending []int32
 	push := func(s int32) {
 		children = children[:0]
-		for c := head[s]; c >= 0; c = sibling[c] {
+		for c := groups[s].child; c >= 0; c = groups[c].sibling {
 			children = append(children, c)
 		}
 		slices.SortFunc(children, func(a, b int32) int {
 			ra, rb := groups[a].m-groups[a].w, groups[b].m-groups[b].w
-			if ra != rb {
-				return int(rb - ra)
-			}
-			return int(a - b)
+			return cmp.Or(cmp.Compare(rb, ra), cmp.Compare(a, b))
 		})
 		begin := int32(len(pending))
 		stack = append(stack, visit{s, begin, begin, begin + int32(len(children))})
 		pending = append(pending, children...)
 	}
-	order = make([]int32, 0, n)
+	order = make([]int32, 0, len(post))
 	var emit func(s int32)
 	emit = func(s int32) {
 		for c := groups[s].merged; c >= 0; c = groups[c].next {
@@ -133,7 +132,7 @@ func supernodes(parent, post, count []int32) (nodes []supernode, order []int32) 
 			order = append(order, post[k])
 		}
 	}
-	number := make([]int32, len(groups))
+	place := make([]int32, len(groups))
 	for root := range groups {
 		if groups[root].parent >= 0 {
 			continue
@@ -152,14 +151,14 @@ func supernodes(parent, post, count []int32) (nodes []supernode, order []int32) 
 			pending = pending[:top.begin]
 			stack = stack[:len(stack)-1]
 			g := &groups[s]
-			number[s] = int32(len(nodes))
-			nodes = append(nodes, supernode{first: int32(len(order)), w: int32(g.w), m: int32(g.m), parent: parentOf[s]})
+			place[s] = int32(len(nodes))
+			nodes = append(nodes, supernode{first: int32(len(order)), w: g.w, m: g.m, parent: parentOf[s]})
 			emit(s)
 		}
 	}
 	for k := range nodes {
 		if q := nodes[k].parent; q >= 0 {
-			nodes[k].parent = number[q]
+			nodes[k].parent = place[q]
 		}
 		nodes[k].lo = int32(k)
 	}
