@@ -41,7 +41,7 @@ type group struct {
 // 15(4), 1989, pp. 291–309, who bound the number of zeros instead).
 func supernodes(parent, post, count []int32) (nodes []supernode, order []int32) {
 	owner := make([]int32, len(post)) // of each column, by its old number
-	joins := func(k int) bool { // post[k] and the column before it
+	joins := func(k int) bool {       // post[k] and the column before it
 		i, j := post[k-1], post[k]
 		return parent[i] == j && count[i] == count[j]+1
 	}
