@@ -7,10 +7,10 @@ import "math"
 type envelope []window
 
 const (
-	// Differences of distance below tie (of the distance) or blur (of the coordinates it
-	// is computed from, which are larger near a source) are round-off: the images of one
-	// source differ by some ulps after many unfoldings. The older window then stays, so
-	// that no window is replaced by its own image, for ever.
+	// Differences of distance below tie (of the distance) or blur (of the halfedge, since
+	// near a source the coordinates are larger than the distance) are round-off: the
+	// images of one source differ by some ulps after many unfoldings. The older window
+	// then stays, so that no window is replaced by its own image, for ever.
 	tie, blur = 1e-14, 2e-15
 	// Windows narrower than this (of the halfedge) are dropped. What falls into the
 	// cracks is caught by slack.
@@ -111,7 +111,7 @@ func (e *envelope) weave(w window, thin float64, spare *envelope) {
 			open = max(open, old.b1)
 			continue
 		}
-		cut, ours, parts := duel(&w, old, l, r)
+		cut, ours, parts := duel(&w, old, l, r, thin*blur/narrow)
 		// Alternate pieces of the two, from the left end of the first.
 		begin, isOurs := old.b0, false
 		if open <= old.b0 {
@@ -152,11 +152,10 @@ func (e *envelope) weave(w window, thin float64, spare *envelope) {
 }
 
 // duel tells where on [l, r] w is shorter than old: between cut[p] and cut[p+1] if
-// ours[p], for p below parts.
-func duel(w, old *window, l, r float64) (cut [4]float64, ours [3]bool, parts int) {
+// ours[p], for p below parts. Differences of less than noise do not count.
+func duel(w, old *window, l, r, noise float64) (cut [4]float64, ours [3]bool, parts int) {
 	ol, or := old.at(l), old.at(r)
 	fl, fr := w.at(l)-ol, w.at(r)-or
-	noise := blur * (r + math.Abs(old.x) + math.Abs(w.x))
 	epsL, epsR := max(tie*ol, noise), max(tie*or, noise)
 	cut[0], cut[1], parts = l, r, 1
 	switch {
