@@ -6,11 +6,13 @@ import (
 	"fmt"
 	"io"
 	"math"
+	"slices"
 
 	"github.com/spf13/cobra"
 
 	"heatskin/internal/fieldfile"
 	"heatskin/kernel"
+	"heatskin/mesh"
 )
 
 // balanceSummary is where heat came from and went up to one time:
@@ -221,17 +223,18 @@ func diffuse(ctx context.Context, j *job, g *ground, problem *kernel.Problem, ti
 // that are held or lose heat) the shortest time has to be resolved, and the length
 // sqrt(D/c) over which a face that loses heat forgets them.
 func (c *conditionFlags) resolution(diffusivity float64, seconds []float64, sources bool) resolution {
-	if !sources && c.file == "" && len(c.said) == 0 {
-		return evenly
-	}
-	times := append([]float64{}, seconds...)
+	times := slices.Clone(seconds)
 	if c.faceLoss != nil && c.faceLoss.coefficient > 0 {
 		times = append(times, 1/c.faceLoss.coefficient)
 	}
-	if len(times) == 0 {
-		return evenly
+	jumps := sources || c.file != "" || len(c.said) > 0
+	switch {
+	case !jumps && len(seconds) > 0:
+		return evenly // a given field is no finer than the file
+	case !jumps || len(times) == 0:
+		return forFields
 	}
-	return forHeat(diffusivity, times)
+	return func(s *mesh.Surface) float64 { return min(forFields(s), forHeat(diffusivity, times)(s)) }
 }
 
 // longestAtJumps is the longest edge of a triangle where heat is put in or u is held, as

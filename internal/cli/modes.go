@@ -82,7 +82,7 @@ of their square is 1, and the value that is largest in size is positive.`,
 		}
 		enough := func(s *mesh.Surface) float64 {
 			// ResolutionFor allows edges that give half as many vertices on even meshes.
-			return s.ResolutionFor(max(autoVertices, min(count, autoBudget/(2*verticesPerMode))*2*verticesPerMode))
+			return s.ResolutionFor(max(fieldVertices, min(count, autoBudget/(2*verticesPerMode))*2*verticesPerMode))
 		}
 		g, err := prepare(ctx, j, part, &input, &refine, &hold, enough)
 		if err != nil {

@@ -61,7 +61,7 @@ the particle obeys du/dt = D * Laplacian(u); as probabilists define it, D = 1/2.
 		if err != nil {
 			return err
 		}
-		g, err := prepare(ctx, j, part, &input, &refine, &target, evenly)
+		g, err := prepare(ctx, j, part, &input, &refine, &target, forFields)
 		if err != nil {
 			return err
 		}

@@ -50,7 +50,7 @@ without discretisation error. The table has the columns line,index,x,y,z,s,trian
 length run so far, triangle holds the stretch that begins there. Where lines that run
 elsewhere are as short, one of them is given and a warning says so.`,
 		Example: `  heatskin path cap.stl --at-vertex 0 --to-vertex 900 > line.csv
-  heatskin path cap.stl --at-boundary 1 --to-point 62,0,20 --out creep.ply --summary creep.json
+  heatskin path cap.stl --at-boundary 1 --to-point 42.5,0,6 --out creep.ply --summary creep.json
   heatskin path cap.stl --at-boundary 0 --to-file bolts.csv --out lines.csv`,
 		Args: oneMesh,
 	}

@@ -4,7 +4,16 @@ import (
 	"errors"
 
 	"heatskin/kernel"
+	"heatskin/mesh"
 )
+
+// fieldVertices is how finely a part is cut, unasked, for fields that only the equation
+// and the edges shape: steady ones, times of passage, modes. At the tip of a slit, where
+// errors shrink no faster than edges, the mean time of passage is off by 0.8 % as if cut
+// into 10 000 vertices and by 0.4 % at 40 000, which takes half a second.
+const fieldVertices = 40_000
+
+func forFields(s *mesh.Surface) float64 { return s.ResolutionFor(fieldVertices) }
 
 // verticesOf are the surface vertices of datum i: the one where a point lies, or those
 // along a line, with the ones that cutting faces has added there. After makeSolver.
