@@ -2,6 +2,7 @@ package sparse
 
 import (
 	"context"
+	"math"
 	"runtime"
 	"slices"
 	"sync"
@@ -33,10 +34,19 @@ type Analysis struct {
 	nodes      []supernode // in postorder
 	rows       []int32     // below the columns of each supernode, ascending, in the order of elimination
 	relative   []int32     // the same rows as places in the parent's front
+	lower      lower
 	plan       *plan
 	stats      Stats
 	workspaces sync.Pool    // of *workspace
 	vectors    [3]sync.Pool // of *vectors, for 1, 8 and 16 right sides
+}
+
+// lower is the part of the pattern below the diagonal, in the order of elimination, and where a matrix on the pattern
+// keeps its entries: to fill a column takes no search and no table of places.
+type lower struct {
+	ptr  []int64 // entries of column k are [ptr[k], ptr[k+1])
+	row  []int32
+	from []int32 // index in Matrix.Off
 }
 
 // Stats returns counts of the factor to come.
@@ -46,6 +56,9 @@ func (a *Analysis) Stats() Stats { return a.stats }
 // p must not change afterwards. The error is a *SizeError or ctx.Err().
 func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 	n := p.Dim()
+	if len(p.Adj) > math.MaxInt32 {
+		return nil, &SizeError{n, 12 * int64(len(p.Adj)), 12 * math.MaxInt32}
+	}
 	workers := opt.Workers
 	if workers <= 0 {
 		workers = runtime.GOMAXPROCS(0)
@@ -81,19 +94,51 @@ func Analyze(ctx context.Context, p *Pattern, opt Options) (*Analysis, error) {
 		a.stats.StoredValues += factorSize(int64(node.w), int64(node.m))
 	}
 	a.plan = makePlan(a.nodes, workers)
-	a.stats.PeakBytes = 8*a.stats.StoredValues + a.plan.bytes(n) + 8*below + 16*int64(n)
+	a.stats.PeakBytes = 8*a.stats.StoredValues + a.plan.bytes(n) + 8*below + 16*int64(n) + 4*int64(len(p.Adj))
 	if opt.MaxBytes > 0 && a.stats.PeakBytes > opt.MaxBytes {
 		return nil, &SizeError{n, a.stats.PeakBytes, opt.MaxBytes}
 	}
 	a.rows = make([]int32, below)
 	a.relative = make([]int32, below)
 	a.structure(g, order, inverse)
+	a.lower = makeLower(p, g, near, order, inverse, workers)
 	a.perm = order
 	for k, v := range order {
 		a.perm[k] = near[v]
 	}
 	a.inverse = invert(a.perm)
 	return a, ctx.Err()
+}
+
+func makeLower(p *Pattern, g *graph, near, perm, inverse []int32, workers int) lower {
+	n := len(perm)
+	l := lower{ptr: make([]int64, n+1), row: make([]int32, len(p.Adj)/2), from: make([]int32, len(p.Adj)/2)}
+	chunks := (n + chunk - 1) / chunk
+	inParallel(workers, chunks, func(_, c int) {
+		for k := c * chunk; k < min((c+1)*chunk, n); k++ {
+			for _, w := range g.neighbours(perm[k]) {
+				if int(inverse[w]) > k {
+					l.ptr[k+1]++
+				}
+			}
+		}
+	})
+	for k := range n {
+		l.ptr[k+1] += l.ptr[k]
+	}
+	inParallel(workers, chunks, func(_, c int) {
+		for k := c * chunk; k < min((c+1)*chunk, n); k++ {
+			v := perm[k]
+			at, first := l.ptr[k], p.Ptr[near[v]] // rows of g list neighbours in the order of p
+			for q, w := range g.neighbours(v) {
+				if i := inverse[w]; int(i) > k {
+					l.row[at], l.from[at] = i, int32(first)+int32(q)
+					at++
+				}
+			}
+		}
+	})
+	return l
 }
 
 func invert(perm []int32) (inverse []int32) {

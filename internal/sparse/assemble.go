@@ -48,32 +48,29 @@ func (f *Factor) assemble(fr *front, s int32, ln *lane, p0, p1 int) {
 // scatter adds the entries of the matrix in columns [c0, c1) of the front; place[i] is where row i, below the
 // columns, comes in it.
 func (f *Factor) scatter(fr *front, node *supernode, place []int32, c0, c1 int) {
-	a, m, held := f.a, f.matrix, f.held
+	a, off, held := f.a, f.matrix.Off, f.heldInOrder
 	end := node.first + node.w
 	for c := c0; c < c1; c++ {
 		k := node.first + int32(c)
-		v := a.perm[k]
 		array, base, step := fr.column(c)
 		column := array[base+c/8*step:] // from the block on the diagonal
-		step8 := int32(step)
-		block := int32(c / 8)
-		if held != nil && held[v] {
+		step8, block := int32(step), int32(c/8)
+		if held != nil && held[k] {
 			column[c%8] = 1
 			continue
 		}
 		scale := f.scale[k]
-		column[c%8] = m.Diag[v] * scale * scale
-		adj, off := m.Adj[m.Ptr[v]:m.Ptr[v+1]], m.Off[m.Ptr[v]:m.Ptr[v+1]]
-		for q, w := range adj {
-			i := a.inverse[w]
-			if i <= k || held != nil && held[w] {
+		column[c%8] = f.matrix.Diag[a.perm[k]] * scale * scale
+		from := a.lower.from[a.lower.ptr[k]:a.lower.ptr[k+1]]
+		for q, i := range a.lower.row[a.lower.ptr[k]:a.lower.ptr[k+1]] {
+			if held != nil && held[i] {
 				continue
 			}
 			r := i - node.first
 			if i >= end {
 				r = place[i]
 			}
-			column[(r>>3-block)*step8+r&7] += off[q] * scale * f.scale[i]
+			column[(r>>3-block)*step8+r&7] += off[from[q]] * scale * f.scale[i]
 		}
 	}
 }

@@ -16,7 +16,9 @@ type Factor struct {
 	scale  []float64 // diagonal of S, in the order of elimination
 	matrix *Matrix   // last factored; nil before and after a failure
 	held   []bool
-	work   *workspace
+
+	heldInOrder []bool // held, in the order of elimination, while Factorize runs
+	work        *workspace
 }
 
 // workspace is what a numeric factorisation needs beside the factor itself.
@@ -71,10 +73,15 @@ func (f *Factor) Factorize(ctx context.Context, m *Matrix, held []bool) error {
 		f.values = make([]float64, a.stats.StoredValues+slack)
 		f.scale = make([]float64, n)
 	}
+	if held != nil {
+		f.heldInOrder = make([]bool, n)
+		defer func() { f.heldInOrder = nil }()
+	}
 	for k, v := range a.perm {
 		d := m.Diag[v]
 		if held != nil && held[v] {
 			d = 1
+			f.heldInOrder[k] = true
 		}
 		if !(d > 0) || d > math.MaxFloat64 {
 			return &NotPositiveDefiniteError{int(v), d}
