@@ -228,6 +228,9 @@ func (s *Solver) estimate(w *front, d []float64, shown int) (mean, most float64)
 		a := &w.at[v]
 		if s.vertexOut(v) < shown && a.d > 0 && !math.IsInf(a.d, 1) {
 			err := (a.err + math.Abs(d[v]-a.d)) / a.d // d is the front's own, or the Poisson field
+			if !(err <= 1) {
+				err = 1 // nothing is known; NaN too
+			}
 			sum += err
 			squares += err * err
 			most = max(most, err)
@@ -235,7 +238,7 @@ func (s *Solver) estimate(w *front, d []float64, shown int) (mean, most float64)
 		}
 	}
 	count = max(count, 1)
-	return 1.6*sum/count + 0.2*math.Sqrt(squares/count) + rounding, 4*most + 10*rounding
+	return min(1.6*sum/count+0.2*math.Sqrt(squares/count)+rounding, 1), min(4*most+10*rounding, 1)
 }
 
 // walk visits the vertices breadth-first from the sources and measures each path.
