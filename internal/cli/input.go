@@ -4,10 +4,12 @@ import (
 	"context"
 	"errors"
 	"math"
+	"os"
 	"strconv"
 
 	"github.com/spf13/pflag"
 
+	"heatskin/internal/pages"
 	"heatskin/mesh"
 )
 
@@ -43,10 +45,14 @@ func (m *meshFlags) load(ctx context.Context, j *job, name string) (*mesh.Mesh, 
 		return nil, usagef("-: a mesh from standard input needs --format stl, ply, obj or off")
 	}
 	j.clock.enter("read")
+	if info, err := os.Stat(name); err == nil && info.Mode().IsRegular() {
+		pages.Reserve(3 * info.Size()) // what a binary STL takes until it is welded
+	}
 	part, err := mesh.Load(ctx, name, j.std.In, mesh.LoadOptions{Format: m.format, Weld: m.weld})
 	if err != nil {
 		return nil, refuse(err)
 	}
+	makeRoom(part.NumVertices())
 	for _, text := range part.File.Warnings {
 		j.warn(name + ": " + text)
 	}
