@@ -36,6 +36,17 @@ func (e *MemoryError) Error() string {
 		"raise the limit or set a radius", e.Limit, e.Reach, e.Bytes)
 }
 
+// A StallError is a wave that crossed every triangle many times over and came no
+// farther: triangles so thin that round-off alone moves the wave about in them.
+type StallError struct {
+	Reach float64 // distances up to here were done
+}
+
+func (e *StallError) Error() string {
+	return fmt.Sprintf("exact distances: want the wave to go on, got no farther than %g; "+
+		"weld the triangles that are thinner than round-off", e.Reach)
+}
+
 // A TraceError is a shortest line that could not be drawn to its length: on a mesh so
 // twisted or so flat in places that round-off leads the line astray.
 type TraceError struct {
