@@ -236,7 +236,9 @@ func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64)
 			// Straightened, were there nothing in the way, it would be this much shorter.
 			r := ray{kappa: max(w.at[q].left, w.at[q].right), ex: 1}
 			sin, cos := math.Sincos(angle)
-			a.err = shadowDoubt * (length - r.at(length*cos, length*sin))
+			if straight := r.at(length*cos, length*sin); straight < length { // NaN if its centre is q
+				a.err = shadowDoubt * (length - straight)
+			}
 		}
 	}
 	a.left, a.right = w.bend(a.left, length, v), w.bend(a.right, length, v)
