@@ -12,6 +12,7 @@ import (
 // distanceSummary is what the summary says of distances. Errors are relative.
 type distanceSummary struct {
 	Method             string `json:"method"`
+	Settled            bool   `json:"settled_by_exact_propagation"` // see settle
 	EstimatedMeanError number `json:"estimated_mean_error"`
 	EstimatedMaxError  number `json:"estimated_max_error"`
 	ChordError         number `json:"chord_error"`
@@ -46,6 +47,9 @@ func newDistance(j *job) *cobra.Command {
 The datum is one source or several: the distance is that to the nearest of them. It is
 measured along the triangles, whatever their shape. A vertex that no source can be reached
 from has the distance inf.
+
+Where the fast method finds that it cannot be sure of its distances on a coarse part, exact
+propagation takes over and a message says so; --max-edge (none, or a length) and --target-error leave it alone.
 
 The estimated error is that of the method against shortest paths over the flat triangles.
 The chord error is another matter: how far distances on the flat triangles are from those
@@ -115,6 +119,11 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		if err != nil {
 			return err
 		}
+		if ask.method == methodHeat && !ask.options.Smooth && !flags.Changed("smoothing") && refine.maxEdge == 0 && target.mean == 0 {
+			if got, err = ask.settle(ctx, j, g, got, &source); err != nil {
+				return err
+			}
+		}
 		var missed error
 		if target.mean > 0 {
 			if got, missed, err = target.pursue(ctx, j, g, got, &input, &source, &ask); err != nil {
@@ -141,6 +150,7 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 func summarizeDistance(method string, found *distanceAnswer, chords float64) *distanceSummary {
 	s := &distanceSummary{
 		Method:             method,
+		Settled:            found.settled,
 		EstimatedMeanError: number(found.mean), EstimatedMaxError: number(found.most),
 		ChordError:      number(chords),
 		LargestDistance: number(math.NaN()),
@@ -168,7 +178,7 @@ func summarizeDistance(method string, found *distanceAnswer, chords float64) *di
 // accuracy keeps two facts apart that are easily mixed up.
 func (s *distanceSummary) accuracy() string {
 	method := "no error on the flat triangles but rounding"
-	if s.Method != methodExact {
+	if s.Method != methodExact && !s.Settled {
 		method = fmt.Sprintf("estimated error on the flat triangles: %s in the mean, %s at most",
 			roughly(float64(s.EstimatedMeanError)), roughly(float64(s.EstimatedMaxError)))
 	}

@@ -25,6 +25,7 @@ type distanceAnswer struct {
 	result
 	mean, most float64 // estimated relative errors, the worst over all that was measured
 	solves     int
+	settled    bool // by exact propagation, see settle
 }
 
 // answer measures on g.
