@@ -153,6 +153,9 @@ places and lost.`,
 		if err := conditions.apply(problem, g, sources); err != nil {
 			return err
 		}
+		if err := g.bounded(problem); err != nil {
+			return err
+		}
 		found := g.result(refine.keep)
 		j.summary.kernelSummary = &kernelSummary{Heat: []heatSummary{}}
 		if len(times.seconds) > 0 {
@@ -173,6 +176,9 @@ places and lost.`,
 			found.fields = append(found.fields, fieldfile.Column{Name: "u_steady", Values: u})
 			low, high := extremes(u)
 			j.summary.steadySummary = &steadySummary{steadyField{number(g.heat(u)), number(low), number(high), number(off)}}
+		}
+		if err := g.finiteFields(found); err != nil {
+			return err
 		}
 		if output.history != "" {
 			found.tables = append(found.tables, table{output.history, func(w io.Writer) error {
@@ -237,13 +243,21 @@ func (c *conditionFlags) resolution(diffusivity float64, seconds []float64, sour
 	return func(s *mesh.Surface) float64 { return min(forFields(s), forHeat(diffusivity, times)(s)) }
 }
 
-// longestAtJumps is the longest edge of a triangle where heat is put in or u is held, as
-// kernel's estimate for the heat of a point takes it.
+// longestAtJumps is the longest edge of a triangle where heat is put in, or u is held
+// at one corner and free at another, as kernel's estimate for the heat of a point takes it.
 func (g *ground) longestAtJumps(pr *kernel.Problem) float64 {
+	held := func(v int32) bool { return pr.Hold != nil && !math.IsNaN(pr.Hold[v]) }
 	longest := 0.0
-	for h, v := range g.surface.Vert {
-		if pr.Load != nil && pr.Load[v] != 0 || pr.Hold != nil && !math.IsNaN(pr.Hold[v]) {
-			first := h - h%3
+	for first := 0; first < len(g.surface.Vert); first += 3 {
+		corners := g.surface.Vert[first : first+3]
+		put, holds := false, 0
+		for _, v := range corners {
+			put = put || pr.Load != nil && pr.Load[v] != 0 && !held(v)
+			if held(v) {
+				holds++
+			}
+		}
+		if put || holds > 0 && holds < 3 {
 			longest = max(longest, g.surface.Length[first], g.surface.Length[first+1], g.surface.Length[first+2])
 		}
 	}

@@ -26,6 +26,9 @@ type modeSummary struct {
 // relatively; by Weyl's law, λ = 4π·count/area, that is 0.2 % for the last one.
 const verticesPerMode = 500
 
+// modesMemory bounds the vectors that modes are made from, 2*count + 100 of them.
+const modesMemory = 8 << 30
+
 // newModes is `heatskin modes`.
 func newModes(j *job) *cobra.Command {
 	var (
@@ -87,6 +90,10 @@ of their square is 1, and the value that is largest in size is positive.`,
 		g, err := prepare(ctx, j, part, &input, &refine, &hold, enough)
 		if err != nil {
 			return err
+		}
+		n := g.surface.NumVertices
+		if most := (modesMemory/(8*n) - 100) / 2; count > most && count < n { // from n on there are not so many
+			return refusef("count: %d modes on %d vertices take more than %d GiB; want at most %d, or a larger --max-edge", count, n, modesMemory>>30, most)
 		}
 		if err := g.makeSolver(ctx, j); err != nil {
 			return err
