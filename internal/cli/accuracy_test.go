@@ -9,7 +9,8 @@ import (
 	"testing"
 )
 
-// distances runs heatskin distance on the demo part and returns its summary.
+// distances runs heatskin distance on the demo part, by the front alone, and returns its
+// summary.
 func distances(t *testing.T, args ...string) (s struct {
 	Mean float64 `json:"estimated_mean_error"`
 	Most float64 `json:"estimated_max_error"`
@@ -17,7 +18,7 @@ func distances(t *testing.T, args ...string) (s struct {
 	t.Helper()
 	var out, told bytes.Buffer
 	file := t.TempDir() + "/sum.json"
-	args = append([]string{"distance", "../../testdata/demo/cap.stl", "--quiet", "--summary", file}, args...)
+	args = append([]string{"distance", "../../testdata/demo/cap.stl", "--quiet", "--max-edge", "9", "--summary", file}, args...)
 	if status := Main(args, Streams{In: strings.NewReader(""), Out: &out, Err: &told}); status != statusDone {
 		t.Fatalf("status %d: %s", status, told.String())
 	}
