@@ -210,7 +210,10 @@ func diffuse(ctx context.Context, j *job, g *ground, problem *kernel.Problem, ti
 		for k, heat := range b.Lost {
 			balance.Lost = append(balance.Lost, lossSummary{problem.Exchanges[k].Name, number(heat)})
 		}
-		off := edge / t * edge / (8 * problem.Diffusivity)
+		off := math.NaN() // where nothing jumps there is no such error
+		if edge > 0 {
+			off = edge / t * edge / (8 * problem.Diffusivity)
+		}
 		j.summary.Heat = append(j.summary.Heat, heatSummary{
 			Time: number(t), Total: number(b.Inside), BalanceError: number(b.Error),
 			TimeError: number(flow.ErrorEstimates[i]), MeshError: number(off),

@@ -10,6 +10,7 @@ import (
 	"github.com/spf13/cobra"
 
 	"heatskin/internal/fieldfile"
+	"heatskin/mesh"
 	"heatskin/mesh/geodesic"
 )
 
@@ -97,6 +98,10 @@ elsewhere are as short, one of them is given and a warning says so.`,
 			if line == nil {
 				j.warn(fmt.Sprintf("%s cannot be reached from any source: it lies on another body", target.Name))
 				continue
+			}
+			if line.Triangles[0] < 0 { // no stretch: source and target are one place
+				at, _ := mesh.NewLocator(part).Nearest([3]float64(line.Points))
+				line.Triangles[0] = at.Triangle
 			}
 			k := len(lines)
 			lines = append(lines, fieldfile.Polyline{Points: line.Points, S: line.S, Triangles: line.Triangles})
