@@ -129,5 +129,14 @@ func TestSingularMatrixIsRefused(t *testing.T) {
 		held := make([]bool, m.Dim())
 		held[e.Row] = true
 		mustFactorize(t, f, m, held)
+
+		// Round-off leaves last pivots of either sign; positive ones must not pass.
+		rng := rand.New(rand.NewPCG(uint64(levels), 41))
+		for trial := range 20 {
+			m := fromEdges(len(coords)/3, edges, func(int) float64 { return rng.ExpFloat64() }, 0)
+			if err := f.Factorize(context.Background(), m, nil); !errors.As(err, &e) {
+				t.Errorf("levels %d, trial %d: singular, but got %v", levels, trial, err)
+			}
+		}
 	}
 }

@@ -282,6 +282,34 @@ func TestUnitsDoNotMatter(t *testing.T) {
 	}
 }
 
+// The power of two in a right side must come out as it went in, though all of b be subnormal: nothing may
+// be computed down there. The matrix magnifies by about 2^20, so that solutions have all their digits.
+func TestSolveIsHomogeneous(t *testing.T) {
+	m := fromEdges(900, gridEdges(30, 30), func(e int) float64 { return 1 + float64(e%3) }, 0x1p-20)
+	f := mustAnalyze(t, m.Pattern, Options{}).NewFactor()
+	mustFactorize(t, f, m, nil)
+	b, want, wantMany := make([]float64, 1800), make([]float64, 900), make([]float64, 1800)
+	for i := range b {
+		b[i] = float64(i % 3)
+	}
+	f.SolveTo(want, b[:900])
+	f.SolveManyTo(wantMany, b, 2)
+	for _, e := range []int{-1035, -700, 700, 990} {
+		scaled := make([]float64, len(b))
+		for i := range b {
+			scaled[i] = math.Ldexp(b[i], e)
+		}
+		x, many := make([]float64, 900), make([]float64, 1800)
+		f.SolveTo(x, scaled[:900])
+		f.SolveManyTo(many, scaled, 2)
+		for i := range want {
+			if x[i] != math.Ldexp(want[i], e) || many[i] != math.Ldexp(wantMany[i], e) {
+				t.Fatalf("b scaled by 2^%d: x[%d] = %v and %v, want %v and %v scaled", e, i, x[i], many[i], want[i], wantMany[i])
+			}
+		}
+	}
+}
+
 func TestSolvesMayRunTogether(t *testing.T) {
 	coords, edges := icosphere(5)
 	n := len(coords) / 3
