@@ -70,8 +70,8 @@ func (s *Surface) needed(maxEdge float64) float64 {
 
 // ResolutionFor is the edge length that gives a surface of this area about as many
 // vertices as it has, or least if it has fewer: longer edges stand out. A curved skin
-// is not asked for more than it has: new vertices would lie on its flat triangles and
-// not on the skin, and distances on it are better as it is.
+// of enough vertices is not asked for more than it has: new ones would lie on its flat
+// triangles and not on the skin, and distances on it are better as it is.
 func (s *Surface) ResolutionFor(least int) float64 {
 	area, used := 0.0, 0
 	for f := range int32(s.NumFaces()) {
@@ -82,7 +82,8 @@ func (s *Surface) ResolutionFor(least int) float64 {
 			used++
 		}
 	}
-	if s.curved() {
+	const enough = 2000 // below, the front is coarser than the chords
+	if used >= enough && s.curved() {
 		least = 0
 	}
 	// Equal triangles with edge L: area/n = L²·√3/2. Even meshes of a scan have edges
