@@ -4,12 +4,10 @@ import (
 	"context"
 	"errors"
 	"math"
-	"os"
 	"strconv"
 
 	"github.com/spf13/pflag"
 
-	"heatskin/internal/pages"
 	"heatskin/mesh"
 )
 
@@ -45,14 +43,11 @@ func (m *meshFlags) load(ctx context.Context, j *job, name string) (*mesh.Mesh, 
 		return nil, usagef("-: a mesh from standard input needs --format stl, ply, obj or off")
 	}
 	j.clock.enter("read")
-	if info, err := os.Stat(name); err == nil && info.Mode().IsRegular() {
-		pages.Reserve(3 * info.Size()) // what a binary STL takes until it is welded
-	}
+	makeRoom(name)
 	part, err := mesh.Load(ctx, name, j.std.In, mesh.LoadOptions{Format: m.format, Weld: m.weld})
 	if err != nil {
 		return nil, refuse(err)
 	}
-	makeRoom(part.NumVertices())
 	for _, text := range part.File.Warnings {
 		j.warn(name + ": " + text)
 	}

@@ -11,12 +11,21 @@ import (
 	"heatskin/internal/pages"
 )
 
-// makeRoom prepares the heap for a computation on so many vertices. On 650 000 of them
-// it saves a fifth of the time and a tenth of the memory.
-func makeRoom(vertices int) {
-	const bytesEach = 1400 // of a distance, factor included
-	pages.Reserve(bytesEach * int64(vertices))
-	if vertices > 50_000 {
+// makeRoom prepares the heap for a computation on the mesh in a file. With 650 000
+// vertices that saves a fifth of the time and a tenth of the memory.
+func makeRoom(name string) {
+	info, err := os.Stat(name)
+	if err != nil || !info.Mode().IsRegular() {
+		return
+	}
+	// A distance takes some 1500 bytes for each vertex, two thirds of them outside the
+	// factor; a binary STL has 100 bytes for it, other formats 40 to 80.
+	factor := int64(40)
+	if strings.HasSuffix(strings.ToLower(name), ".stl") {
+		factor = 16
+	}
+	pages.Reserve(factor * info.Size())
+	if info.Size() > 4<<20 {
 		// Nearly all is large arrays without pointers: to collect what is over costs next
 		// to nothing, to put it off costs memory.
 		debug.SetGCPercent(25)
