@@ -31,8 +31,10 @@ type distanceAnswer struct {
 // answer measures on g.
 func (q *distanceQuestion) answer(ctx context.Context, j *job, g *ground) (*distanceAnswer, error) {
 	got := &distanceAnswer{}
-	var measure ruler = newExactRuler(j, g)
-	if q.method != methodExact {
+	var measure ruler
+	if q.method == methodExact {
+		measure = newExactRuler(j, g)
+	} else {
 		options := q.options
 		if !q.keep {
 			options.Shown = g.original.NumVertices()
