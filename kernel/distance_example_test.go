@@ -20,6 +20,10 @@ func ExampleSolver_Distance() {
 	if err != nil {
 		log.Fatal(err)
 	}
+	// Twelve triangles are too few to carry a front: cut them, the shape stays.
+	if m, err = mesh.Refine(context.Background(), m, 1, 100000); err != nil {
+		log.Fatal(err)
+	}
 	skin := mesh.NewLocator(m)
 	live, _ := skin.Nearest([3]float64{0, 6, 11})
 	earth, _ := skin.Nearest([3]float64{30, 6, 1})
@@ -32,10 +36,6 @@ func ExampleSolver_Distance() {
 		log.Fatal(err)
 	}
 	s.Delaunay(1000)
-	// Twelve triangles are too few to carry a front: add vertices, the shape stays.
-	if err := s.Resolve(s.ResolutionFor(5000), 100000); err != nil {
-		log.Fatal(err)
-	}
 	solver, err := kernel.NewSolver(context.Background(), s, kernel.Options{})
 	if err != nil {
 		log.Fatal(err)

@@ -5,6 +5,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"testing"
 
 	"heatskin/internal/meshtest"
@@ -37,20 +38,39 @@ func prepared(t testing.TB, m *mesh.Mesh, resolve bool, data []mesh.Datum) (*mes
 	if err != nil {
 		t.Fatal(err)
 	}
+	if resolve {
+		m, data = refinedFor(t, m, FrontEdge(s), data)
+		if s, err = mesh.NewSurface(m); err != nil {
+			t.Fatal(err)
+		}
+	}
 	if err := s.Place(data); err != nil {
 		t.Fatal(err)
 	}
 	s.Delaunay(s.NumVertices)
-	if resolve {
-		if err := s.Resolve(s.ResolutionFor(40000), 1000000); err != nil {
-			t.Fatal(err)
-		}
-	}
 	v, err := NewSolver(context.Background(), s, Options{})
 	if err != nil {
 		t.Fatal(err)
 	}
 	return s, v
+}
+
+// refinedFor cuts the faces of m and finds the data, vertices and points, on the pieces.
+func refinedFor(t testing.TB, m *mesh.Mesh, edge float64, data []mesh.Datum) (*mesh.Mesh, []mesh.Datum) {
+	t.Helper()
+	fine, err := mesh.Refine(context.Background(), m, edge, 1000000)
+	if err != nil {
+		t.Fatal(err)
+	}
+	pieces := mesh.NewLocator(fine)
+	data = slices.Clone(data)
+	for i, d := range data {
+		if d.Point != nil {
+			place, _ := pieces.Nearest(m.Position(*d.Point))
+			data[i] = mesh.AtPoint(place)
+		}
+	}
+	return fine, data
 }
 
 // field is the distance of every vertex of m from the nearest of the data.

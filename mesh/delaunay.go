@@ -35,8 +35,7 @@ type legaliser struct {
 	queue     []int32
 	queued    []bool // by halfedge
 	mostFlips int
-	budget    int           // edges that may be split
-	touched   func(f int32) // told of every face that a flip or split changed; or nil
+	budget    int // edges that may be split
 }
 
 func (s *Surface) newLegaliser(budget int) *legaliser {
@@ -59,12 +58,6 @@ func (l *legaliser) push(h int32) {
 	}
 }
 
-func (l *legaliser) touch(f int32) {
-	if l.touched != nil {
-		l.touched(f)
-	}
-}
-
 func (l *legaliser) run() {
 	s := l.s
 	for len(l.queue) > 0 {
@@ -77,8 +70,6 @@ func (l *legaliser) run() {
 		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.Flips < l.mostFlips {
 			s.flip(h, g)
 			s.Flips++
-			l.touch(h / 3)
-			l.touch(g / 3)
 			for _, k := range [4]int32{h, prev(h), g, prev(g)} {
 				l.push(k)
 			}
@@ -108,7 +99,6 @@ func (l *legaliser) split(h int32, at float64) {
 	grown := int32(len(s.Vert))
 	s.splitEdge(h, at)
 	around := func(f int32) {
-		l.touch(f)
 		for k := 3 * f; k < 3*f+3; k++ {
 			l.push(k)
 		}

@@ -6,6 +6,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"heatskin/kernel"
 	"heatskin/mesh"
 )
 
@@ -106,7 +107,7 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		if err != nil {
 			return err
 		}
-		content := resolution(forDistance)
+		content := resolution(kernel.FrontEdge)
 		if ask.method == methodExact {
 			content = nil // its results do not depend on how flat faces are cut
 		}

@@ -14,14 +14,11 @@ const (
 	// refineBudget is how many vertices --max-edge may add: what a workstation with
 	// 16 GiB factors with room to spare.
 	refineBudget = 5_000_000
-	// autoVertices and distanceVertices are how finely a part is cut, unasked, where it
-	// is coarser: as if into so many vertices, of which the longest edges allowed need
-	// about half. Distances past the holes of a plate (60 of them, 4160 vertices) are off by
-	// 0.36 % in the mean at 10 000, 0.15 % at 40 000, which takes a third of a second.
-	// autoBudget bounds what is added unasked.
-	autoVertices     = 10_000
-	distanceVertices = 40_000
-	autoBudget       = 200_000
+	// autoVertices is how finely a part is cut, unasked, where it is coarser: as if into so
+	// many vertices, of which the longest edges allowed need about half. autoBudget bounds
+	// what is added unasked.
+	autoVertices = 10_000
+	autoBudget   = 200_000
 )
 
 // A ground is what a command computes on: the mesh as it was read, the mesh with its
@@ -40,9 +37,6 @@ type resolution func(s *mesh.Surface) float64
 
 // evenly is content where no edge stands out, on a part of at least some vertices.
 func evenly(s *mesh.Surface) float64 { return s.ResolutionFor(autoVertices) }
-
-// forDistance is evenly, of vertices enough for a front to find its way round corners.
-func forDistance(s *mesh.Surface) float64 { return s.ResolutionFor(distanceVertices) }
 
 // forHeat also resolves heat at the shortest time, as far as the budget goes.
 func forHeat(diffusivity float64, times []float64) resolution {
