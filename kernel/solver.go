@@ -26,7 +26,8 @@ type Options struct {
 // Made once, by NewSolver: the matrices L and M, the components, and the symbolic
 // analysis of their common pattern. Kept from call to call: the factor last used by
 // time steps, and the factor of L itself. Memory: about 16 bytes per entry of L, and
-// 8 per entry of each factor (see Stats). A Solver may serve several goroutines at
+// 8 per entry of each factor (see Stats). Vertices are numbered anew, as the faces come,
+// which no public method shows (see numbering). A Solver may serve several goroutines at
 // once.
 type Solver struct {
 	numbering
@@ -68,7 +69,9 @@ func NewSolver(ctx context.Context, s *mesh.Surface, opt Options) (*Solver, erro
 		op.component[i] = component[v]
 	}
 	op.count = count
-	return newSolver(ctx, own, op, opt)
+	solver, err := newSolver(ctx, own, op, opt)
+	own.Positions = nil // they have served to order the unknowns
+	return solver, err
 }
 
 // operators are what heat needs to know of a surface, in the numbering that they say.
