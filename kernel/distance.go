@@ -18,6 +18,9 @@ type DistanceOptions struct {
 	// Shown is how many vertices, the first of the mesh, errors are estimated over: those
 	// that somebody will see. 0 means all that the mesh had.
 	Shown int
+	// Once says that no other question follows: the factor is let go before the front
+	// starts, and memory peaks lower.
+	Once bool
 }
 
 // A DistanceResult is a field of distances and how it came about.
@@ -32,8 +35,9 @@ type DistanceResult struct {
 	MaxError  float64   // estimated largest relative error
 }
 
-// longest is how many times √t a part may measure, from its sources: u falls like
-// exp(-d/√t), and e^-600 is 1e-261, safely inside double precision with its factor.
+// longest is how many times √t a part may measure, from its sources, by its mean edge and
+// the number of edges to the farthest vertex: u falls like exp(-d/√t), and e^-600 is
+// 1e-261, safely inside double precision with its factor.
 const longest = 600
 
 // Distance is the distance along the surface from the nearest of the data that were
@@ -63,12 +67,12 @@ func (s *Solver) Distance(ctx context.Context, which []int, opt DistanceOptions)
 	if len(src.vertices) == 0 {
 		return nil, &OptionError{"sources", "at least one datum placed on the surface", "none"}
 	}
-	w := s.front()
 	res := &DistanceResult{}
-	order, err := s.arrivalOrder(ctx, w, src, opt.Smoothing, res)
+	order, err := s.arrivalOrder(ctx, src, opt, res)
 	if err != nil {
 		return nil, err
 	}
+	w := s.front()
 	s.options.Progress("front", 0)
 	w.start(src.vertices, src.line)
 	w.sweep(order)
@@ -156,27 +160,30 @@ func (s *Solver) sources(which []int) sources {
 
 // front makes the sweep's tables once; each call of Distance has a state of its own.
 func (s *Solver) front() *front {
-	s.frameOnce.Do(func() { s.frame = newFrames(s.surface) })
+	s.frameOnce.Do(func() { s.frame = newFrames(s.surface, s.lumped) })
 	return newFront(s.surface, &s.frame)
 }
 
 // arrivalOrder solves for heat and lists the vertices of the components with sources,
 // warmest first. Where u has left double precision after all (or is exactly equal),
 // the order of a breadth-first walk serves.
-func (s *Solver) arrivalOrder(ctx context.Context, w *front, src sources, smoothing float64, res *DistanceResult) ([]int32, error) {
-	walk, far := w.walk(src.vertices)
-	res.Times = s.heatTimes(src, far, smoothing, res)
+func (s *Solver) arrivalOrder(ctx context.Context, src sources, opt DistanceOptions, res *DistanceResult) ([]int32, error) {
+	walk, steps := s.walk(src.vertices)
+	res.Times = s.heatTimes(src, steps, opt.Smoothing, res)
 	f, err := s.factorShifted(ctx, res.Times)
 	if err != nil {
 		return nil, err
 	}
-	defer s.release(f)
 	s.options.Progress("heat", 0)
 	u := make([]float64, s.surface.NumVertices)
 	for _, v := range src.vertices {
 		u[v] = s.lumped[v]
 	}
 	f.SolveTo(u, u)
+	s.release(f)
+	if opt.Once {
+		s.letGo()
+	}
 	res.Solves++
 	s.options.Progress("heat", 1)
 	cold := make([]float64, len(u))
@@ -190,7 +197,7 @@ func (s *Solver) arrivalOrder(ctx context.Context, w *front, src sources, smooth
 }
 
 // heatTimes chooses t for each component.
-func (s *Solver) heatTimes(src sources, far []float64, smoothing float64, res *DistanceResult) []float64 {
+func (s *Solver) heatTimes(src sources, steps []int32, smoothing float64, res *DistanceResult) []float64 {
 	sum, count, reach := make([]float64, len(s.area)), make([]float64, len(s.area)), make([]float64, len(s.area))
 	for h, v := range s.surface.Vert {
 		if c := s.component[v]; c >= 0 {
@@ -198,9 +205,9 @@ func (s *Solver) heatTimes(src sources, far []float64, smoothing float64, res *D
 			count[c]++
 		}
 	}
-	for v, d := range far {
-		if c := s.component[v]; c >= 0 && !math.IsInf(d, 1) {
-			reach[c] = max(reach[c], d)
+	for v, n := range steps {
+		if c := s.component[v]; c >= 0 {
+			reach[c] = max(reach[c], float64(n))
 		}
 	}
 	tau := make([]float64, len(s.area))
@@ -212,7 +219,7 @@ func (s *Solver) heatTimes(src sources, far []float64, smoothing float64, res *D
 		c := s.component[v]
 		h := sum[c] / count[c]
 		res.Shortest = min(res.Shortest, h)
-		tau[c] = max(smoothing*h*h, reach[c]/longest*(reach[c]/longest))
+		tau[c] = h * h * max(smoothing, reach[c]/longest*(reach[c]/longest))
 	}
 	return tau
 }
@@ -257,28 +264,27 @@ func (s *Solver) estimate(w *front, d []float64, shown int) (mean, most float64)
 	return min(1.6*sum/count+0.2*math.Sqrt(squares/count)+rounding, 1), min(4*most+10*rounding, 1)
 }
 
-// walk visits the vertices breadth-first from the sources and measures each path.
-func (w *front) walk(sources []int32) (order []int32, far []float64) {
-	far = make([]float64, len(w.at))
-	for v := range far {
-		far[v] = math.Inf(1)
+// walk visits the vertices breadth-first from the sources; steps is how many edges away
+// each lies, -1 where no path leads.
+func (s *Solver) walk(sources []int32) (order, steps []int32) {
+	steps = make([]int32, len(s.component))
+	for v := range steps {
+		steps[v] = -1
 	}
+	order = make([]int32, 0, len(steps))
 	for _, v := range sources {
-		far[v] = 0
+		steps[v] = 0
 		order = append(order, v)
 	}
+	l := s.stiffness
 	for i := 0; i < len(order); i++ {
 		v := order[i]
-		for _, h := range w.frame.out(v) {
-			if u := w.s.Vert[next(h)]; math.IsInf(far[u], 1) {
-				far[u] = far[v] + w.s.Length[h]
-				order = append(order, u)
-			}
-			if u := w.s.Vert[prev(h)]; math.IsInf(far[u], 1) {
-				far[u] = far[v] + w.s.Length[prev(h)]
+		for _, u := range l.Adj[l.Ptr[v]:l.Ptr[v+1]] {
+			if steps[u] < 0 {
+				steps[u] = steps[v] + 1
 				order = append(order, u)
 			}
 		}
 	}
-	return order, far
+	return order, steps
 }

@@ -87,6 +87,13 @@ func (s *Solver) release(f *sparse.Factor) {
 	})
 }
 
+// letGo drops the factors that nobody uses.
+func (s *Solver) letGo() {
+	s.shelf.mu.Lock()
+	defer s.shelf.mu.Unlock()
+	s.shelf.items = slices.DeleteFunc(s.shelf.items, func(it *shelved) bool { return it.users == 0 })
+}
+
 // assemble builds M + diag(τ) L and the mask of held rows.
 func (s *Solver) assemble(tau []float64) (a *sparse.Matrix, held []bool) {
 	l := s.stiffness

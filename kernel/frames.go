@@ -49,14 +49,14 @@ const (
 // from one vertex to the next, fronts that differ by more are different fronts.
 const mostTurning = 0.012
 
-func newFrames(s *mesh.Surface) frames {
+func newFrames(s *mesh.Surface, area []float64) frames {
 	n := s.NumVertices
 	f := frames{
 		start: make([]int32, n+1), corner: make([]int32, len(s.Vert)),
 		at: make([]float64, len(s.Vert)), wide: make([]float64, len(s.Vert)),
 		total: make([]float64, n), kind: make([]uint8, n),
 		curvature: make([]float64, n), turning: make([]float64, n), edge: make([]float64, n),
-		longest: make([]float64, n), area: s.LumpedMass(),
+		longest: make([]float64, n), area: area,
 	}
 	for h, v := range s.Vert {
 		f.start[v+1]++

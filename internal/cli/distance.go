@@ -115,6 +115,8 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		if err != nil {
 			return err
 		}
+		chords := make(chan float64, 1) // beside the solve, which leaves a processor idle at times
+		go func() { chords <- mesh.ChordError(part) }()
 		ask.probes, ask.keep = output.points, refine.keep
 		got, err := ask.answer(ctx, j, g)
 		if err != nil {
@@ -133,7 +135,7 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		}
 
 		j.clock.enter("chords")
-		j.summary.distanceSummary = summarizeDistance(ask.method, got, mesh.ChordError(part))
+		j.summary.distanceSummary = summarizeDistance(ask.method, got, <-chords)
 		j.summary.Solves = got.solves
 		if far := float64(j.summary.LargestDistance); !math.IsNaN(far) {
 			j.note("largest distance %s, %d of %d vertices reached", input.length(far), j.summary.Reached, got.shown.NumVertices())

@@ -36,6 +36,7 @@ func (q *distanceQuestion) answer(ctx context.Context, j *job, g *ground) (*dist
 		measure = newExactRuler(j, g)
 	} else {
 		options := q.options
+		options.Once = !q.each && q.matrix == ""
 		if !q.keep {
 			options.Shown = g.original.NumVertices()
 		}
