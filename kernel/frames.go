@@ -3,6 +3,7 @@ package kernel
 import (
 	"math"
 
+	"heatskin/internal/parallel"
 	"heatskin/mesh"
 )
 
@@ -58,18 +59,10 @@ func newFrames(s *mesh.Surface, area []float64) frames {
 		curvature: make([]float64, n), turning: make([]float64, n), edge: make([]float64, n),
 		longest: make([]float64, n), area: area,
 	}
-	for h, v := range s.Vert {
+	for _, v := range s.Vert {
 		f.start[v+1]++
-		f.wide[h] = s.Angle(int32(h))
-		f.total[v] += f.wide[h]
-		l, k := s.Length[h], s.Length[prev(int32(h))]
-		f.edge[v] += (l + k) / 2
-		f.longest[v] = max(f.longest[v], l, k)
 	}
 	for v := range n {
-		if f.start[v+1] > 0 {
-			f.edge[v] /= float64(f.start[v+1])
-		}
 		f.start[v+1] += f.start[v]
 	}
 	fill := append([]int32(nil), f.start[:n]...)
@@ -77,11 +70,38 @@ func newFrames(s *mesh.Surface, area []float64) frames {
 		f.corner[fill[v]] = int32(h)
 		fill[v]++
 	}
-	for v := range int32(n) {
-		f.walk(s, v)
+	each := func(do func(v int32)) {
+		parallel.EachBlock(n, func(_, lo, hi int) {
+			for v := int32(lo); v < int32(hi); v++ {
+				do(v)
+			}
+		})
 	}
-	f.measureCurvature(s)
+	each(func(v int32) { f.measure(s, v) })
+	each(func(v int32) { f.walk(s, v) })
+	defect := make([]float64, n)
+	each(func(v int32) {
+		if f.kind[v] != smooth {
+			return
+		}
+		if d := 2*math.Pi - f.total[v]; math.Abs(d) >= 1e-9 { // else it is rounding
+			defect[v] = d
+		}
+	})
+	each(func(v int32) { f.measureCurvature(s, v, defect) })
 	return f
+}
+
+// measure adds up the angles at v, and looks at the edges there.
+func (f *frames) measure(s *mesh.Surface, v int32) {
+	out := f.out(v)
+	for _, h := range out {
+		f.wide[h] = s.Angle(h)
+		f.total[v] += f.wide[h]
+		l, k := s.Length[h], s.Length[prev(h)]
+		f.edge[v] += (l + k) / 2 / float64(len(out))
+		f.longest[v] = max(f.longest[v], l, k)
+	}
 }
 
 // walk orders the halfedges out of v counter-clockwise and measures their angles.
@@ -224,36 +244,24 @@ func (f *frames) turn(v int32, from, to float64) float64 {
 
 // measureCurvature spreads the angle defects over the areas around: the Gaussian
 // curvature of a curved skin, and 0 near the corners and on the flat faces of a part.
-func (f *frames) measureCurvature(s *mesh.Surface) {
-	n := s.NumVertices
-	defect := make([]float64, n)
-	for v := range defect {
-		if f.kind[v] == smooth {
-			defect[v] = 2*math.Pi - f.total[v]
-			if math.Abs(defect[v]) < 1e-9 {
-				defect[v] = 0 // rounding
-			}
+func (f *frames) measureCurvature(s *mesh.Surface, v int32, defect []float64) {
+	if f.kind[v] != smooth && f.kind[v] != rimmed {
+		return
+	}
+	sumDefect, sumArea, most := defect[v], f.area[v], math.Abs(defect[v])
+	take := func(u int32) {
+		sumDefect += defect[u]
+		sumArea += f.area[u]
+		most = max(most, math.Abs(defect[u]))
+	}
+	for _, h := range f.out(v) {
+		take(s.Vert[next(h)])
+		if s.Boundary(prev(h)) {
+			take(s.Vert[prev(h)]) // no halfedge leads there
 		}
 	}
-	for v := range int32(n) {
-		if f.kind[v] != smooth && f.kind[v] != rimmed {
-			continue
-		}
-		sumDefect, sumArea, most := defect[v], f.area[v], math.Abs(defect[v])
-		take := func(u int32) {
-			sumDefect += defect[u]
-			sumArea += f.area[u]
-			most = max(most, math.Abs(defect[u]))
-		}
-		for _, h := range f.out(v) {
-			take(s.Vert[next(h)])
-			if s.Boundary(prev(h)) {
-				take(s.Vert[prev(h)]) // no halfedge leads there
-			}
-		}
-		if sumArea > 0 {
-			f.curvature[v] = sumDefect / sumArea
-		}
-		f.turning[v] = min(most, mostTurning)
+	if sumArea > 0 {
+		f.curvature[v] = sumDefect / sumArea
 	}
+	f.turning[v] = min(most, mostTurning)
 }

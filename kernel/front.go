@@ -3,6 +3,7 @@ package kernel
 import (
 	"math"
 
+	"heatskin/internal/parallel"
 	"heatskin/mesh"
 )
 
@@ -138,10 +139,10 @@ func (w *front) mend(order []int32) (changed int) {
 			return false
 		}
 		a := w.arrive(v)
-		later := a.d > now.d+w.slack(v)
-		if !(a.d < now.d-w.slack(v)) && !(anew && (now.weak || misled[v]) && a.d != now.d) {
+		if !w.better(v, a, anew) && !(anew && misled[v] && a.d != now.d) {
 			return false
 		}
+		later := a.d > now.d+w.slack(v)
 		now.arrival, now.done = a, true
 		changed++
 		if later {
@@ -161,8 +162,16 @@ func (w *front) mend(order []int32) (changed int) {
 			}
 		}
 	}
+	// Most vertices stay: those are told apart first, all at once, against a state that
+	// does not change meanwhile.
+	stays := make([]bool, len(w.at))
+	parallel.EachBlock(len(order), func(_, lo, hi int) {
+		for _, v := range order[lo:hi] {
+			stays[v] = w.at[v].fixed || !w.better(v, w.arrive(v), true)
+		}
+	})
 	for _, v := range order {
-		if try(v, true) {
+		if (!stays[v] || misled[v]) && try(v, true) {
 			wake(v)
 		}
 	}
@@ -174,6 +183,13 @@ func (w *front) mend(order []int32) (changed int) {
 		}
 	}
 	return changed
+}
+
+// better tells whether an arrival at v is to be taken in place of what is there: it is
+// earlier, or what is there is weak and to be found anew.
+func (w *front) better(v int32, a arrival, anew bool) bool {
+	now := &w.at[v]
+	return a.d < now.d-w.slack(v) || anew && now.weak && a.d != now.d
 }
 
 // slack is how much lower a value must be to be taken up: more than rounding, and more
