@@ -28,6 +28,28 @@
 //   - [Solver.Diffuse], [Solver.Steady]: given fields, held, losing or fed surfaces
 //   - [Solver.Modes]: eigenvalues and eigenfunctions
 //   - [Solver.Passage]: when does a Brownian particle come to a target, and to which?
+//   - [Solver.Distance]: how far is every vertex from the sources?
+//
+// # Distance
+//
+// One heat solve gives the order in which a front from the sources arrives; the front
+// itself is then continued from triangle to triangle in that order (front.go). It knows at
+// each vertex its distance, the direction it came from and its curvature, so that it
+// unfolds flat faces exactly, follows curved ones by the Jacobi equation, turns round
+// re-entrant corners and saddles, and tells where two fronts meet. Measured, mean
+// relative error over all vertices in per cent, unrefined, against closed forms:
+//
+//	sphere, jittered          10 242 vertices 0.0103   40 962: 0.0027   655 362: 0.0002   2 621 442: 0.00006
+//	sphere, shaken            10 242 vertices 0.019    40 962: 0.0065
+//	square, box (45 000), L-plate, slits, ring, tube 5 000 edges long: rounding
+//	cylinder, cone            21 780 and 16 201 vertices: 0.0031, 0.0021 (their chords)
+//	paraboloid 50 625: 0.0023     torus 28 800: 0.0057     coil 260 000 (against exact paths): 0.0077
+//
+// with order 2.0 to 2.3 in h on curved skins. What is hard for it are tessellations that
+// bend sharply from each face to the next, such as the walls of many bores with a few
+// sides each: 0.1 % in the mean there, a few per cent at single vertices. It says so:
+// the estimate that comes with each result is 3 times the true mean error in the median
+// over 132 questions, and below it in none or one. DEVELOPERS.md has the table.
 //
 // # Accuracy
 //
