@@ -6,15 +6,16 @@ export GOFLAGS := -buildvcs=false
 VERSION := $(shell git describe --always --dirty 2>/dev/null || echo unversioned)
 FUZZTIME ?= 10s
 BENCH ?= .
+BENCHTIME ?= 1s
 
 # Packages that hold assembly, or lean on it, run once more in plain Go.
 PUREGO := ./internal/dense ./internal/sparse ./kernel
 
-.PHONY: help build demo test crosscheck bench fuzz lint clean
+.PHONY: help build demo test crosscheck bench bench-peers fuzz lint clean
 .DEFAULT_GOAL := help
 
 help: ## list the targets
-	@sed -n 's/^\([a-z]*\):.*## \(.*\)/  make \1\t\2/p' $(MAKEFILE_LIST) | expand -t 20
+	@sed -n 's/^\([a-z-]*\):.*## \(.*\)/  make \1\t\2/p' $(MAKEFILE_LIST) | expand -t 20
 
 build: ## build/heatskin
 	go build -trimpath -ldflags '-X heatskin/internal/cli.version=$(VERSION)' -o build/heatskin ./cmd/heatskin
@@ -46,8 +47,11 @@ crosscheck: build ## matrices and results against SciPy, where Debian's python3-
 	  /usr/bin/python3 testdata/crosscheck/crosscheck.py build/heatskin build/crosscheck; \
 	else echo "crosscheck: nothing was compared: /usr/bin/python3 has no SciPy (on Debian: apt-get install python3-scipy)"; fi
 
-bench: ## the benchmarks; BENCH=name picks some
-	go test -run '^$$' -bench '$(BENCH)' -benchmem ./...
+bench: ## the benchmarks, from 10 thousand to 655 thousand vertices; BENCH=name picks some, BENCHTIME (1s) is for each
+	go test -run '^$$' -bench '$(BENCH)' -benchtime $(BENCHTIME) -benchmem -timeout 2h ./...
+
+bench-peers: build ## heatskin beside SciPy and CHOLMOD, in turn; RUNS, LEVELS, THREADS as in testdata/peers/run.sh; may install packages
+	testdata/peers/run.sh
 
 fuzz: ## every fuzz target for FUZZTIME (10s) each
 	@set -e; for package in $$(go list ./...); do \
@@ -60,8 +64,8 @@ fuzz: ## every fuzz target for FUZZTIME (10s) each
 lint: ## gofmt, go vet, staticcheck (pinned in go.mod)
 	@unformatted=$$(gofmt -l cmd internal kernel mesh testdata); \
 	  if [ -n "$$unformatted" ]; then echo "gofmt would change:"; echo "$$unformatted"; exit 1; fi
-	go vet ./... ./testdata/crosscheck
-	go tool staticcheck ./... ./testdata/crosscheck
+	go vet ./... ./testdata/crosscheck ./testdata/peers/spheres
+	go tool staticcheck ./... ./testdata/crosscheck ./testdata/peers/spheres
 
 clean: ## remove what was built
 	rm -rf build
