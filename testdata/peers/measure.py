@@ -189,7 +189,8 @@ def main():
     print(f"{model.group(1) if model else os.uname().machine}, {os.cpu_count()} processors; {threads} threads each; "
           f"OpenBLAS core {core or 'as it finds best'}")
     print("Ratios are ours / theirs. Stages in seconds. Theirs leave out the start of Python; ours count what lies between two of")
-    print("them to the first, so that they are not too short. Theirs factor twice, the second time between heat and distance.")
+    print("them to the first, so that they are not too short: the solve's with sorting by heat (make bench BENCH=Sphere has it alone).")
+    print("Theirs factor twice, the second time between heat and distance.")
     walls = {level: measure(level) for level in sorted(set(levels))}
     known = sorted(walls)
     for low, high in zip(known, known[1:]):
