@@ -12,8 +12,8 @@ const weightFloor = 1e-10
 
 // Delaunay flips edges until the triangulation is intrinsic Delaunay (A. Bobenko and
 // B. Springborn, Discrete Comput. Geom. 38, 2007), so that every cotangent weight is
-// at least 0. Edges that may not be flipped (boundary, more than two faces, a datum)
-// and whose weight is negative are split at the foot of a height. Both leave the
+// at least 0. Edges that may not be flipped (boundary, more than two faces, a datum,
+// faces of different density) and whose weight is negative are split at the foot of a height. Both leave the
 // metric as it is. At most budget edges are split; what is left is in Unmended.
 func (s *Surface) Delaunay(budget int) {
 	l := s.newLegaliser(budget)
@@ -33,7 +33,8 @@ func (s *Surface) Delaunay(budget int) {
 type legaliser struct {
 	s         *Surface
 	queue     []int32
-	queued    []bool // by halfedge
+	queued    []bool  // by halfedge
+	faces     []int32 // around an edge that is split
 	mostFlips int
 	budget    int // edges that may be split
 }
@@ -67,7 +68,7 @@ func (l *legaliser) run() {
 		if !s.negative(h) {
 			continue
 		}
-		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.Flips < l.mostFlips {
+		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.alike(h/3, g/3) && s.Flips < l.mostFlips {
 			s.flip(h, g)
 			s.Flips++
 			for _, k := range [4]int32{h, prev(h), g, prev(g)} {
@@ -97,40 +98,53 @@ func (l *legaliser) split(h int32, at float64) {
 	e := s.Length[h]
 	at = min(max(at, 1e-3*e), 0.999*e) // a needle would only beget more
 	grown := int32(len(s.Vert))
+	l.faces = append(l.faces[:0], h/3)
+	for g := s.Glue[h]; g != h; g = s.Glue[g] {
+		l.faces = append(l.faces, g/3)
+	}
 	s.splitEdge(h, at)
-	around := func(f int32) {
+	for f := grown / 3; f < int32(len(s.Vert)/3); f++ {
+		l.faces = append(l.faces, f)
+	}
+	for _, f := range l.faces {
 		for k := 3 * f; k < 3*f+3; k++ {
 			l.push(k)
 		}
-	}
-	for g := h; ; {
-		around(g / 3)
-		if g = s.Glue[g]; g == h {
-			break
-		}
-	}
-	for f := grown / 3; f < int32(len(s.Vert)/3); f++ {
-		around(f)
 	}
 }
 
 // Weight is the cotangent weight of the edge of h: half the sum, over its faces, of
 // the cotangents of the opposite angles.
 func (s *Surface) Weight(h int32) float64 {
-	sum := s.cot[h]
+	sum := s.pull(h)
 	for g := s.Glue[h]; g != h; g = s.Glue[g] {
-		sum += s.cot[g]
+		sum += s.pull(g)
 	}
 	return sum / 2
 }
 
+// alike tells whether faces e and f have the same density: a flip would mix theirs.
+func (s *Surface) alike(e, f int32) bool { return s.Density == nil || s.Density[e] == s.Density[f] }
+
 func (s *Surface) negative(h int32) bool {
+	if s.Density != nil {
+		return s.negativeWith(s.Density, h)
+	}
 	sum, size := s.cot[h], math.Abs(s.cot[h])
 	for g := s.Glue[h]; g != h; g = s.Glue[g] {
 		sum += s.cot[g]
 		size += math.Abs(s.cot[g])
 	}
 	return sum < -weightFloor*(1+size)
+}
+
+func (s *Surface) negativeWith(density []float64, h int32) bool {
+	sum, size := s.pull(h), density[h/3]+math.Abs(s.pull(h))
+	for g := s.Glue[h]; g != h; g = s.Glue[g] {
+		sum += s.pull(g)
+		size += math.Abs(s.pull(g))
+	}
+	return sum < -weightFloor*size
 }
 
 // apex places the corner opposite h in the frame whose origin is the tail of h and
@@ -248,12 +262,20 @@ func (s *Surface) cutFace(g, m int32, spoke float64) int32 {
 	s.mark = append(s.mark, 0, s.mark[jk], 0)
 	s.cot = append(s.cot, 0, 0, 0)
 	s.parent = append(s.parent, s.parent[g/3])
+	s.inheritDensity(g / 3)
 	s.moveGlue(jk, f+1) // the outer halfedge j→k; its place becomes m→k
 	s.Vert[jk] = m
 	s.Length[jk] = spoke
 	s.mark[jk] = 0
 	s.Glue[jk], s.Glue[f+2] = f+2, jk
 	return f
+}
+
+// inheritDensity gives a new face the density of face f, which it is cut from.
+func (s *Surface) inheritDensity(f int32) {
+	if s.Density != nil {
+		s.Density = append(s.Density, s.Density[f])
+	}
 }
 
 func (s *Surface) addVertex() int32 {

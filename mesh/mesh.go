@@ -3,11 +3,13 @@ package mesh
 import "fmt"
 
 // A Mesh is a triangulated surface as a file gives it: corners that share a
-// number are joined, nothing else is. It is not changed once made.
+// number are joined, nothing else is. It is not changed once made, except that it may
+// be given a metric before it is first used.
 type Mesh struct {
 	Positions []float64 // x, y, z of vertex v at 3v, in the file's length unit
 	Triangles []int32   // corners of triangle f at 3f, each a vertex number
 	File      FileInfo  // where it came from; zero for a mesh made in memory
+	Metric    *Metric   // of edges; nil: their lengths in space
 }
 
 // FileInfo tells which file a mesh was read from.

@@ -14,12 +14,16 @@ import (
 // negative: one that rounding left a hair below 0 is set to 0. Vertices without faces
 // have empty rows. O(n).
 func (s *Surface) Laplacian() *sparse.Matrix {
-	l := s.assemble(func(h int32) float64 { return -s.cot[h] / 2 })
+	l := s.assemble(func(h int32) float64 { return -s.pull(h) / 2 })
+	rounding := 1e-6
+	if s.Density != nil {
+		rounding *= slices.Max(s.Density)
+	}
 	eachBlock(s.NumVertices, func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
 			row := l.Off[l.Ptr[i]:l.Ptr[i+1]]
 			for k, w := range row {
-				if w > 0 && w <= 1e-6 && s.Unmended == 0 {
+				if w > 0 && w <= rounding && s.Unmended == 0 {
 					row[k] = 0
 				}
 			}
@@ -208,7 +212,7 @@ func (s *Surface) eachDatumEdge(i int, do func(h int32, length float64)) {
 			first = min(first, g)
 		}
 		if first == h {
-			do(h, s.Length[h])
+			do(h, s.LengthInSpace(h))
 		}
 	}
 }

@@ -229,6 +229,8 @@ func (s *Surface) splitFace(f int32, w [3]float64) int32 {
 	s.Glue = append(s.Glue, f1, f2+2, 3*f+1, f2, 3*f+2, f1+1)
 	s.cot = append(s.cot, 0, 0, 0, 0, 0, 0)
 	s.parent = append(s.parent, s.parent[f], s.parent[f])
+	s.inheritDensity(f)
+	s.inheritDensity(f)
 	s.moveGlue(3*f+1, f1)
 	s.moveGlue(3*f+2, f2)
 	s.Vert[3*f+2] = p

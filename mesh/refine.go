@@ -20,6 +20,9 @@ import (
 // surface by no more than a hundred-thousandth of its faces' heights: lengths change by
 // less than 1e-10. O(n log n).
 //
+// A mesh with a metric is cut to edges of that length by the metric, which the result
+// has too, and nothing is flipped: each face lies in the one it was cut from.
+//
 // At most budget vertices are added; the error is a *BudgetError if that does not do
 // (Needed is an estimate, on coarse meshes up to twice too large), or ctx.Err(). Refine panics if maxEdge is not positive and finite.
 func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, error) {
@@ -28,18 +31,23 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 	}
 	// Halfedges must fit int32, and a new vertex brings six of them on a smooth surface.
 	budget = max(0, min(budget, (math.MaxInt32-len(m.Triangles))/8))
-	r := &refiner{x: m.Positions, t: m.Triangles, limit: maxEdge, most: m.NumVertices() + budget}
+	r := &refiner{x: m.Positions, t: m.Triangles, metric: m.Metric, limit: maxEdge, most: m.NumVertices() + budget}
 	r.glued = glue(m.Triangles, m.NumVertices())
 	long := r.longEdges()
 	if len(long) == 0 {
 		return m, nil
 	}
 	r.x, r.t = slices.Clone(m.Positions), slices.Clone(m.Triangles)
+	if m.Metric != nil {
+		r.metric = m.Metric.clone()
+	}
 	r.back = make([]int32, len(r.glued))
 	for h, o := range r.glued {
 		r.back[o] = int32(h)
 	}
-	r.flipBefore(long)
+	if r.metric == nil {
+		r.flipBefore(long)
+	}
 	needed := r.estimate()
 	if needed > 2.5*float64(budget)+100 { // no use in trying
 		return nil, &BudgetError{MaxEdge: maxEdge, Budget: budget, Needed: int(min(needed, math.MaxInt32))}
@@ -63,7 +71,7 @@ func Refine(ctx context.Context, m *Mesh, maxEdge float64, budget int) (*Mesh, e
 			return nil, ctx.Err()
 		}
 	}
-	return &Mesh{Positions: r.x, Triangles: r.t, File: m.File}, ctx.Err()
+	return &Mesh{Positions: r.x, Triangles: r.t, File: m.File, Metric: r.metric}, ctx.Err()
 }
 
 // refiner is a mesh while it is cut. Edges are cycles of halfedges, linked both ways.
@@ -71,6 +79,7 @@ type refiner struct {
 	x           []float64
 	t           []int32
 	glued, back []int32
+	metric      *Metric // nil: that of space
 	limit       float64
 	most        int
 	queue       [][]longEdge // by length, see enqueue
@@ -83,7 +92,18 @@ type refiner struct {
 // longEdge is an edge that was too long; it may have been flipped away since.
 type longEdge struct{ h, a, b int32 }
 
-func (r *refiner) length(h int32) float64 { return dist(r.x, r.t[h], r.t[next(h)]) }
+// length is that of the edge of h, the greatest if its faces do not agree.
+func (r *refiner) length(h int32) float64 {
+	a, b := r.t[h], r.t[next(h)]
+	if r.metric == nil {
+		return dist(r.x, a, b)
+	}
+	longest := r.metric.length(r.x, h/3, a, b)
+	for g := r.glued[h]; g != h; g = r.glued[g] {
+		longest = max(longest, r.metric.length(r.x, g/3, a, b))
+	}
+	return longest
+}
 
 func (r *refiner) collapsed(h int32) bool {
 	a, b, c := r.t[h], r.t[next(h)], r.t[prev(h)]
@@ -156,6 +176,9 @@ func (r *refiner) divide(h int32) {
 		r.x = r.x[:3*middle]
 		return
 	}
+	if r.metric != nil {
+		r.metric.divide(a, b, s)
+	}
 	// Face (u, v, c) becomes (u, m, c) under its own number and (m, v, c) under a new one.
 	var first, second int32 = -1, -1 // last halfedge linked between a and m, and between m and b
 	r.work, r.spokes = r.work[:0], r.spokes[:0]
@@ -165,6 +188,9 @@ func (r *refiner) divide(h int32) {
 		r.t[next(e)] = middle
 		g := int32(len(r.t))
 		r.t = append(r.t, middle, v, c)
+		if r.metric != nil {
+			r.metric.inherit(e / 3)
+		}
 		r.glued = append(r.glued, g, g+1, g+2)
 		r.back = append(r.back, g, g+1, g+2)
 		r.replace(next(e), g+1)
@@ -186,7 +212,9 @@ func (r *refiner) divide(h int32) {
 	r.enqueueEdge(first)
 	r.enqueueEdge(second)
 	r.joinSpokes()
-	r.flipAround(middle)
+	if r.metric == nil {
+		r.flipAround(middle)
+	}
 }
 
 // spoke is a new edge from a dividing vertex to the corner opposite, by one halfedge.
@@ -409,6 +437,9 @@ func (r *refiner) estimate() (needed float64) {
 		if onEdges > 0 {
 			u, v, w := point3(r.x, r.t[f]), point3(r.x, r.t[f+1]), point3(r.x, r.t[f+2])
 			area := length3(cross3(minus3(v, u), minus3(w, u))) / 2
+			if r.metric != nil {
+				area = triangleArea(r.length(f), r.length(f+1), r.length(f+2))
+			}
 			needed += max(0, area/(areaShare*r.limit*r.limit)-onEdges/2-0.5)
 		}
 	}

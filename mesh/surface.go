@@ -20,9 +20,11 @@ type Surface struct {
 	Length      []float64 // length of halfedge h, the same all around its edge
 	Glue        []int32   // the next halfedge around the edge: h itself on a boundary, a cycle otherwise
 	Positions   []float64 // x, y, z by vertex: to order unknowns and to show results, never to measure
+	Density     []float64 // by face, what the stiffness is multiplied by; nil: 1. See NewTensorMetric
 	NoValue     []bool    // by vertex: in no triangle of positive area, so no field has a value there
 
 	Guard     LengthGuard // what was done to degenerate triangles
+	Mismatch  float64     // the largest relative difference between an edge and what the metric of one of its faces gives it
 	Flips     int         // edge flips made by Delaunay
 	Splits    int         // edges split by Delaunay
 	Unmended  int         // edges left with a negative weight (only if the budget of splits ran out)
@@ -69,7 +71,7 @@ func (e *RangeError) Error() string {
 	return fmt.Sprintf("the part measures %g in its own unit; want 1e-140 to 1e140 (change the unit)", e.Size)
 }
 
-// NewSurface measures the edges of m and glues its triangles. Triangles with a
+// NewSurface measures the edges of m, by its metric if it has one, and glues its triangles. Triangles with a
 // repeated corner, exact duplicates, and flat triangles that alone hold a vertex are
 // left out; faces are turned so that neighbours agree wherever the surface allows.
 // Faces are in no order that the mesh knows: see alongCurve. The error is an
@@ -87,11 +89,17 @@ func NewSurface(m *Mesh) (*Surface, error) {
 	}
 	s.orient()
 	s.Length, s.cot = make([]float64, len(s.Vert)), make([]float64, len(s.Vert))
-	eachBlock(s.NumFaces(), func(_, lo, hi int) {
-		for h := int32(3 * lo); h < int32(3*hi); h++ {
-			s.Length[h] = dist(s.Positions, s.Vert[h], s.head(h))
+	if m.Metric != nil {
+		if err := s.measure(vertex); err != nil {
+			return nil, err
 		}
-	})
+	} else {
+		eachBlock(s.NumFaces(), func(_, lo, hi int) {
+			for h := int32(3 * lo); h < int32(3*hi); h++ {
+				s.Length[h] = dist(s.Positions, s.Vert[h], s.head(h))
+			}
+		})
+	}
 	s.guardLengths()
 	eachBlock(s.NumFaces(), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
@@ -435,6 +443,40 @@ func (s *Surface) Cot(h int32) float64 { return s.cot[h] }
 // Area of face f.
 func (s *Surface) Area(f int32) float64 {
 	return triangleArea(s.Length[3*f], s.Length[3*f+1], s.Length[3*f+2])
+}
+
+// pull is the cotangent opposite halfedge h, its face's density counted.
+func (s *Surface) pull(h int32) float64 {
+	if s.Density == nil {
+		return s.cot[h]
+	}
+	return s.Density[h/3] * s.cot[h]
+}
+
+// LeastDensity is the least of the faces' densities.
+func (s *Surface) LeastDensity() float64 {
+	if s.Density == nil {
+		return 1
+	}
+	return slices.Min(s.Density)
+}
+
+// Slow is a length in face f over the root of its density: what takes heat as long where
+// that is 1.
+func (s *Surface) Slow(f int32, length float64) float64 {
+	if s.Density == nil {
+		return length
+	}
+	return length / math.Sqrt(s.Density[f])
+}
+
+// LengthInSpace is the length of an edge that boundaries and data keep from being
+// flipped: what heat along a line goes by. It is Length unless the metric is a tensor's.
+func (s *Surface) LengthInSpace(h int32) float64 {
+	if s.Density == nil {
+		return s.Length[h]
+	}
+	return dist(s.Positions, s.Vert[h], s.head(h))
 }
 
 // Angle is the angle of a face at the tail of halfedge h, in radians.
