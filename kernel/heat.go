@@ -231,36 +231,37 @@ func (f *flow) judge(i int, t float64, opt HeatOptions) {
 	if floor := -max(opt.Tolerance, 1e-12) * largest; lowest < floor {
 		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g: values fall to %.3g (largest %.3g): the mass matrix or a negative edge weight does not keep signs", t, lowest, largest))
 	}
-	edge := f.longestEdge(u, largest)
-	r.MeshErrors[i] = edge / f.reach[i] * edge / 8
+	edge, slow := f.longestEdge(u, largest)
+	r.MeshErrors[i] = slow / f.reach[i] * slow / 8
 	if off := 100 * r.MeshErrors[i]; off > 5 {
 		effect := fmt.Sprintf("put values off by about %.2g %%", off)
 		if off > 100 {
 			effect = "cannot carry it"
 		}
 		r.Warnings = append(r.Warnings, fmt.Sprintf("t = %g is short for this mesh: edges of %.3g where the heat is %s; --max-edge %.2g brings that to 1 %%",
-			t, edge, effect, ResolvingEdge(opt.Diffusivity, t)))
+			t, edge, effect, ResolvingEdge(opt.Diffusivity*s.surface.LeastDensity(), t)))
 	}
 }
 
 // longestEdge is the longest edge of the triangles that matter to the peak of u: at
-// the source, or where u is above a tenth of its largest value.
-func (f *flow) longestEdge(u []float64, largest float64) float64 {
+// the source, or where u is above a tenth of its largest value; slow is the same over
+// the root of the density, as a face of density 1 would have it.
+func (f *flow) longestEdge(u []float64, largest float64) (longest, slow float64) {
 	s := f.solver.surface
 	if s == nil {
-		return 0
+		return 0, 0
 	}
-	longest := 0.0
 	for face := 0; face < len(s.Vert); face += 3 {
 		matters := false
 		for _, v := range s.Vert[face : face+3] {
 			matters = matters || f.load[v] > 0 || u[v] > 0.1*largest
 		}
 		if matters {
-			longest = max(longest, s.Length[face], s.Length[face+1], s.Length[face+2])
+			edge := max(s.Length[face], s.Length[face+1], s.Length[face+2])
+			longest, slow = max(longest, edge), max(slow, s.Slow(int32(face/3), edge))
 		}
 	}
-	return longest
+	return longest, slow
 }
 
 // ResolvingEdge is the edge length with which a heat kernel at time t is good to

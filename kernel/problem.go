@@ -66,8 +66,9 @@ func (s *Solver) Along(i int) []float64 {
 		}
 		if first {
 			head := f.Vert[h-h%3+(h+1)%3]
-			w[f.Vert[h]] += f.Length[h] / 2
-			w[head] += f.Length[h] / 2
+			length := f.LengthInSpace(h)
+			w[f.Vert[h]] += length / 2
+			w[head] += length / 2
 		}
 	}
 	return s.outward(w)

@@ -70,7 +70,9 @@ func NewSolver(ctx context.Context, s *mesh.Surface, opt Options) (*Solver, erro
 	}
 	op.count = count
 	solver, err := newSolver(ctx, own, op, opt)
-	own.Positions = nil // they have served to order the unknowns
+	if own.Density == nil { // lines are measured by them otherwise
+		own.Positions = nil // they have served to order the unknowns
+	}
 	return solver, err
 }
 
