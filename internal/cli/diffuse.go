@@ -86,6 +86,7 @@ places and lost.`,
 	output.register(flags)
 	flags.StringVar(&output.history, "history", "", "the field at the probes over time, as `FILE.csv` with a row for each probe and time")
 	input.register(flags)
+	input.registerMetric(flags, mesh.NewTensorMetric)
 	refine.register(flags)
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -108,7 +109,7 @@ places and lost.`,
 		if err := step.check(cmd); err != nil {
 			return err
 		}
-		if err := output.prepare(append(source.files, args[0], initial.file, conditions.file)...); err != nil {
+		if err := output.prepare(slices.Concat(source.files, input.tables(), []string{args[0], initial.file, conditions.file})...); err != nil {
 			return err
 		}
 		if err := initial.open(ctx); err != nil {
@@ -222,7 +223,7 @@ func diffuse(ctx context.Context, j *job, g *ground, problem *kernel.Problem, ti
 		})
 		if off > 0.05 {
 			j.warn(fmt.Sprintf("t = %g is short for this mesh: edges of %.3g at sources and held places put values near them off by about %.2g %%; --max-edge %.2g brings that to 1 %%",
-				t, edge, min(100, 100*off), kernel.ResolvingEdge(problem.Diffusivity, t)))
+				t, edge, min(100, 100*off), kernel.ResolvingEdge(problem.Diffusivity*g.surface.LeastDensity(), t)))
 		}
 	}
 	return nil
@@ -261,7 +262,8 @@ func (g *ground) longestAtJumps(pr *kernel.Problem) float64 {
 			}
 		}
 		if put || holds > 0 && holds < 3 {
-			longest = max(longest, g.surface.Length[first], g.surface.Length[first+1], g.surface.Length[first+2])
+			edge := max(g.surface.Length[first], g.surface.Length[first+1], g.surface.Length[first+2])
+			longest = max(longest, g.surface.Slow(int32(first/3), edge))
 		}
 	}
 	return longest

@@ -3,6 +3,7 @@ package cli
 import (
 	"fmt"
 	"math"
+	"slices"
 
 	"github.com/spf13/cobra"
 
@@ -52,6 +53,8 @@ from has the distance inf.
 Where the fast method finds that it cannot be sure of its distances on a coarse part, exact
 propagation takes over and a message says so; --max-edge (none, or a length) and --target-error leave it alone.
 
+With --metric or --tensor lengths are those of the metric: see the README.
+
 The estimated error is that of the method against shortest paths over the flat triangles.
 The chord error is another matter: how far distances on the flat triangles are from those
 on the curved part that they may stand for. No refinement lowers that one.`,
@@ -84,6 +87,7 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 	flags.StringVar(&ask.matrix, "matrix", "", "distances between all sources, as `FILE.csv` with the columns from,to,distance")
 	output.register(flags)
 	input.register(flags)
+	input.registerMetric(flags, mesh.NewArrivalMetric)
 	refine.register(flags)
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -94,13 +98,16 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		if ask.method == methodExact && (flags.Changed("smooth") || flags.Changed("smoothing")) {
 			return usagef("--smooth and --smoothing belong to --method heat")
 		}
+		if ask.method == methodExact && input.metric+input.tensor != "" {
+			return usagef("--method exact goes by lengths in space; --metric and --tensor need --method heat")
+		}
 		if target.mean > 0 && math.IsInf(refine.maxEdge, 1) {
 			return usagef("--target-error refines where --max-edge none forbids it; leave one of them out")
 		}
 		if ask.matrix != "" {
 			output.tables = append(output.tables, ask.matrix)
 		}
-		if err := output.prepare(append(source.files, args[0])...); err != nil {
+		if err := output.prepare(slices.Concat(source.files, input.tables(), []string{args[0]})...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])
@@ -116,13 +123,13 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 			return err
 		}
 		chords := make(chan float64, 1) // beside the solve, which leaves a processor idle at times
-		go func() { chords <- mesh.ChordError(part) }()
+		go func() { chords <- chordError(part) }()
 		ask.probes, ask.keep = output.points, refine.keep
 		got, err := ask.answer(ctx, j, g)
 		if err != nil {
 			return err
 		}
-		if ask.method == methodHeat && !ask.options.Smooth && !flags.Changed("smoothing") && refine.maxEdge == 0 && target.mean == 0 {
+		if ask.method == methodHeat && !ask.options.Smooth && !flags.Changed("smoothing") && refine.maxEdge == 0 && target.mean == 0 && part.Metric == nil {
 			if got, err = ask.settle(ctx, j, g, got, &source); err != nil {
 				return err
 			}
@@ -147,6 +154,14 @@ on the curved part that they may stand for. No refinement lowers that one.`,
 		return missed
 	}
 	return cmd
+}
+
+// chordError is that of a part; NaN where a metric counts that knows of no chords.
+func chordError(part *mesh.Mesh) float64 {
+	if part.Metric != nil {
+		return math.NaN()
+	}
+	return mesh.ChordError(part)
 }
 
 // summarizeDistance looks at the rows that are shown.
@@ -184,6 +199,9 @@ func (s *distanceSummary) accuracy() string {
 	if s.Method != methodExact && !s.Settled {
 		method = fmt.Sprintf("estimated error on the flat triangles: %s in the mean, %s at most",
 			roughly(float64(s.EstimatedMeanError)), roughly(float64(s.EstimatedMaxError)))
+	}
+	if math.IsNaN(float64(s.ChordError)) {
+		return method
 	}
 	return fmt.Sprintf("%s; the triangles against a curved part they may stand for (chord error): %s", method, roughly(float64(s.ChordError)))
 }

@@ -3,6 +3,7 @@ package cli
 import (
 	"context"
 	"errors"
+	"fmt"
 	"math"
 	"slices"
 
@@ -46,7 +47,7 @@ func forHeat(diffusivity float64, times []float64) resolution {
 			area += s.Area(f)
 		}
 		affordable := math.Sqrt(area / autoBudget)
-		return min(evenly(s), max(affordable, kernel.ResolvingEdge(diffusivity, slices.Min(times))))
+		return min(evenly(s), max(affordable, kernel.ResolvingEdge(diffusivity*s.LeastDensity(), slices.Min(times))))
 	}
 }
 
@@ -67,6 +68,7 @@ func prepare(ctx context.Context, j *job, original *mesh.Mesh, input *meshFlags,
 	if err := g.refine(ctx, j, input, refine, content); err != nil {
 		return nil, err
 	}
+	g.warnOfMetric(j)
 	j.clock.enter("place")
 	g.data, err = source.place(ctx, j, original, g.part, input)
 	return g, err
@@ -129,6 +131,9 @@ func (g *ground) makeSolver(ctx context.Context, j *job) error {
 	}
 	j.clock.enter("flip")
 	g.surface.Delaunay(g.surface.NumFaces())
+	if n := g.surface.Unmended; n > 0 {
+		j.warn(fmt.Sprintf("%d edges keep a negative weight: values may leave the range of their data there", n))
+	}
 	var err error
 	if g.solver, err = kernel.NewSolver(ctx, g.surface, kernel.Options{Progress: j.clock.progress}); err != nil {
 		return sorted(err)

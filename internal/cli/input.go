@@ -11,11 +11,14 @@ import (
 	"heatskin/mesh"
 )
 
-// meshFlags tell how the mesh is read: --format --weld --unit.
+// meshFlags tell how the mesh is read: --format --weld --unit, and how it is measured.
 type meshFlags struct {
 	format string
 	weld   float64 // NaN: as the format has it
 	unit   string
+	metric string // file; "": that of space
+	tensor string
+	kind   tensorKind
 }
 
 func (m *meshFlags) register(flags *pflag.FlagSet) {
@@ -42,6 +45,9 @@ func (m *meshFlags) load(ctx context.Context, j *job, name string) (*mesh.Mesh, 
 	if name == "-" && m.format == "" {
 		return nil, usagef("-: a mesh from standard input needs --format stl, ply, obj or off")
 	}
+	if m.metric != "" && m.tensor != "" {
+		return nil, usagef("--metric and --tensor: choose one")
+	}
 	j.clock.enter("read")
 	makeRoom(name)
 	part, err := mesh.Load(ctx, name, j.std.In, mesh.LoadOptions{Format: m.format, Weld: m.weld})
@@ -60,7 +66,7 @@ func (m *meshFlags) load(ctx context.Context, j *job, name string) (*mesh.Mesh, 
 		Faces:    part.NumTriangles(),
 		Unit:     m.unit,
 	}
-	return part, nil
+	return part, m.measure(part)
 }
 
 // refineFlags tell how finely the faces are cut for the computation, and whether

@@ -1,12 +1,14 @@
 package cli
 
 import (
+	"slices"
 	"strconv"
 
 	"github.com/spf13/cobra"
 
 	"heatskin/internal/fieldfile"
 	"heatskin/kernel"
+	"heatskin/mesh"
 )
 
 // kernelSummary is what the summary says of heat.
@@ -109,6 +111,7 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 	step.register(cmd)
 	output.register(flags)
 	input.register(flags)
+	input.registerMetric(flags, mesh.NewTensorMetric)
 	refine.register(flags)
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -122,7 +125,7 @@ area integral is 1. A column u_t0.5 is the field at --time 0.5, under the time a
 		if err := step.check(cmd); err != nil {
 			return err
 		}
-		if err := output.prepare(append(source.files, args[0])...); err != nil {
+		if err := output.prepare(slices.Concat(source.files, input.tables(), []string{args[0]})...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])

@@ -66,6 +66,7 @@ of their square is 1, and the value that is largest in size is positive.`,
 	flags.StringVar(&eigenvalues, "eigenvalues", "", "mode,eigenvalue as `FILE.csv`, in place of standard output")
 	output.register(flags)
 	input.register(flags)
+	input.registerMetric(flags, mesh.NewTensorMetric)
 	refine.register(flags)
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -76,7 +77,7 @@ of their square is 1, and the value that is largest in size is positive.`,
 		if eigenvalues != "" {
 			output.tables = append(output.tables, eigenvalues)
 		}
-		if err := output.prepare(args[0]); err != nil {
+		if err := output.prepare(append(input.tables(), args[0])...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])

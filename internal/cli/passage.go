@@ -4,12 +4,14 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 
 	"github.com/spf13/cobra"
 
 	"heatskin/internal/fieldfile"
 	"heatskin/kernel"
+	"heatskin/mesh"
 )
 
 // passageSummary is what the summary says of first passage.
@@ -47,6 +49,7 @@ the particle obeys du/dt = D * Laplacian(u); as probabilists define it, D = 1/2.
 	positiveVar(flags, &diffusivity, "diffusivity", 1, "`D` in length^2 per second, in the file's length unit")
 	output.register(flags)
 	input.register(flags)
+	input.registerMetric(flags, mesh.NewTensorMetric)
 	refine.register(flags)
 
 	cmd.RunE = func(cmd *cobra.Command, args []string) error {
@@ -54,7 +57,7 @@ the particle obeys du/dt = D * Laplacian(u); as probabilists define it, D = 1/2.
 		if err := target.want("passage"); err != nil {
 			return err
 		}
-		if err := output.prepare(append(target.files, args[0])...); err != nil {
+		if err := output.prepare(slices.Concat(target.files, input.tables(), []string{args[0]})...); err != nil {
 			return err
 		}
 		part, err := input.load(ctx, j, args[0])
