@@ -35,6 +35,7 @@ type legaliser struct {
 	queue     []int32
 	queued    []bool  // by halfedge
 	faces     []int32 // around an edge that is split
+	least     float64 // shorter edges are not split: heights between flat triangles can run into a corner
 	mostFlips int
 	budget    int // edges that may be split
 }
@@ -46,6 +47,7 @@ func (s *Surface) newLegaliser(budget int) *legaliser {
 		// could undo that on a face without area: the bound makes sure.
 		mostFlips: s.Flips + 200*(len(s.Vert)+1000),
 		budget:    budget,
+		least:     1e-10 * slices.Max(s.Length),
 	}
 }
 
@@ -76,7 +78,7 @@ func (l *legaliser) run() {
 			}
 			continue
 		}
-		if s.Splits >= l.budget {
+		if s.Splits >= l.budget || s.Length[h] < l.least {
 			s.Unmended++
 			continue
 		}

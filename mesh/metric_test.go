@@ -238,3 +238,46 @@ func TestMetricsAreRefused(t *testing.T) {
 		t.Errorf("lengths of 1e150: got error %v", err)
 	}
 }
+
+// Tensors at random, from triangle to triangle, make lengths that fit no triangle and edges
+// of which no flip is allowed: operators must stay finite, and lose the sign pattern
+// only where Unmended says so.
+func TestTensorsAtRandom(t *testing.T) {
+	for name, m := range shapes() {
+		for _, ratio := range []float64{3, 1e3, 1e8} {
+			n := m.NumTriangles()
+			way, a, b := make([]float64, 3*n), make([]float64, n), make([]float64, n)
+			rng := rand.New(rand.NewPCG(1, 2))
+			for f := range n {
+				for axis := range 3 {
+					way[3*f+axis] = rng.NormFloat64()
+				}
+				a[f], b[f] = 1e-5*math.Pow(ratio, rng.Float64()), 1e-5
+			}
+			for _, kind := range []func(*mesh.Mesh, []float64, []float64, []float64) (*mesh.Metric, error){mesh.NewTensorMetric, mesh.NewArrivalMetric} {
+				metric, err := kind(m, way, a, b)
+				if err != nil {
+					t.Fatalf("%s: %v", name, err)
+				}
+				s, err := mesh.NewSurface(&mesh.Mesh{Positions: m.Positions, Triangles: m.Triangles, Metric: metric})
+				if err != nil {
+					t.Fatalf("%s: %v", name, err)
+				}
+				if err := s.Place([]mesh.Datum{mesh.AtPoint(mesh.Point{Triangle: 1, Weights: [3]float64{0.3, 0.3, 0.4}})}); err != nil {
+					t.Fatalf("%s: %v", name, err)
+				}
+				s.Delaunay(s.NumFaces())
+				for v, area := range s.LumpedMass() {
+					if !(area > 0) {
+						t.Fatalf("%s, jumps by %g: vertex %d has the area %g", name, ratio, v, area)
+					}
+				}
+				for _, w := range s.Laplacian().Off {
+					if math.IsNaN(w) || math.IsInf(w, 0) || w > 0 && s.Unmended == 0 {
+						t.Fatalf("%s, jumps by %g: an entry is %g, %d edges are left", name, ratio, w, s.Unmended)
+					}
+				}
+			}
+		}
+	}
+}

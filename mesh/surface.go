@@ -27,7 +27,7 @@ type Surface struct {
 	Mismatch  float64     // the largest relative difference between an edge and what the metric of one of its faces gives it
 	Flips     int         // edge flips made by Delaunay
 	Splits    int         // edges split by Delaunay
-	Unmended  int         // edges left with a negative weight (only if the budget of splits ran out)
+	Unmended  int         // edges left with a negative weight (the budget of splits ran out, or they are too short)
 	Duplicate int         // triangles left out: the same corners in the same order as another
 	Collapsed int         // triangles left out: a repeated corner, or no area and a corner without value
 	mesh      *Mesh       // as it was read
@@ -52,6 +52,11 @@ type LengthGuard struct {
 // flat: lengths carry a relative error of 1e-16, so the slack a+b-c then keeps four
 // digits, and distances move by 1e-12 at most.
 const slackFloor = 1e-12
+
+// roomFloor is what a triangle is given where the lengths of a metric make none: they are
+// off by far more than rounding, and a triangle that is all but flat would spoil what is
+// split and flipped beside it.
+const roomFloor = 1e-2
 
 // flatArea is the area, relative to the square of the longest edge, up to which a
 // triangle counts as having none: rounded coordinates give no better.
@@ -368,6 +373,10 @@ func (s *Surface) facesToTurn() (turned []bool, any bool) {
 // edge that grows may spoil a neighbour, which is then looked at again; the growth
 // dies out, since each triangle needs a part of its own length only once.
 func (s *Surface) guardLengths() {
+	room := 1.25 * slackFloor
+	if s.mesh.Metric != nil {
+		room = roomFloor
+	}
 	original := map[int32]float64{} // by smallest halfedge of the edge
 	first := func(h int32) int32 {
 		lo := h
@@ -381,7 +390,7 @@ func (s *Surface) guardLengths() {
 		var again []int32
 		for _, f := range work {
 			h := s.longest(f)
-			missing := (1.25*slackFloor - s.slack(f)) * s.Length[h]
+			missing := (room - s.slack(f)) * s.Length[h]
 			if s.slack(f) >= slackFloor {
 				continue
 			}
