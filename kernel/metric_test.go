@@ -305,48 +305,57 @@ func TestParaboloidByMetricAgreesWithItsMesh(t *testing.T) {
 	})
 }
 
-// Two layers in series, D = 1 and D = 25, between ends held at 0 and 1: linear in each,
-// with the same flux. The field is piecewise linear, and isotropic tensors leave lengths
-// as they are, so that it comes out but for rounding.
-func TestLayersOfDifferentDiffusivity(t *testing.T) {
-	const thin = 25.0
-	m := meshtest.Plate(2, 1, 8, 4, 0, 1)
-	n := m.NumTriangles()
-	way, d := make([]float64, 3*n), make([]float64, n)
-	for f := range n {
-		x := 0.0
-		for _, v := range m.Triangles[3*f : 3*f+3] {
-			x += m.Positions[3*v] / 3
+// Two layers in series between ends held at 0 and 1: linear in each, with the same flux.
+// The field is piecewise linear and the elements are exact for it, whether the layers are
+// isotropic, D = 1 and 25, or plies that cross, with D = 10 along and then across the way.
+func TestLayersInSeries(t *testing.T) {
+	for _, tc := range []struct {
+		name          string
+		along, across [2]float64 // of the layers, along y and along x
+	}{
+		{"isotropic", [2]float64{1, 25}, [2]float64{1, 25}},
+		{"plies", [2]float64{1, 10}, [2]float64{10, 1}},
+	} {
+		m := meshtest.Plate(2, 1, 8, 4, 0, 1)
+		n := m.NumTriangles()
+		way, along, across := make([]float64, 3*n), make([]float64, n), make([]float64, n)
+		for f := range n {
+			x := 0.0
+			for _, v := range m.Triangles[3*f : 3*f+3] {
+				x += m.Positions[3*v] / 3
+			}
+			layer := 0
+			if x > 1 {
+				layer = 1
+			}
+			way[3*f+1], along[f], across[f] = 1, tc.along[layer], tc.across[layer]
 		}
-		if d[f] = 1; x > 1 {
-			d[f] = thin
+		var err error
+		if m.Metric, err = mesh.NewTensorMetric(m, way, along, across); err != nil {
+			t.Fatal(err)
 		}
-	}
-	var err error
-	if m.Metric, err = mesh.NewTensorMetric(m, way, d, d); err != nil {
-		t.Fatal(err)
-	}
-	s := solverFor(t, m, Options{})
-	hold := make([]float64, s.surface.NumVertices)
-	for v := range hold {
-		hold[v] = math.NaN()
-		if x := m.Positions[3*v]; x == 0 || x == 2 {
-			hold[v] = x / 2
+		s := solverFor(t, m, Options{})
+		hold := make([]float64, s.surface.NumVertices)
+		for v := range hold {
+			hold[v] = math.NaN()
+			if v < m.NumVertices() && (m.Positions[3*v] == 0 || m.Positions[3*v] == 2) {
+				hold[v] = m.Positions[3*v] / 2
+			}
 		}
-	}
-	u, _, err := s.Steady(context.Background(), &Problem{Diffusivity: 1, Hold: hold})
-	if err != nil {
-		t.Fatal(err)
-	}
-	flux := 1 / (1 + 1/thin)
-	for v, got := range u {
-		x := m.Positions[3*v]
-		want := flux * x
-		if x > 1 {
-			want = flux * (1 + (x-1)/thin)
+		u, _, err := s.Steady(context.Background(), &Problem{Diffusivity: 1, Hold: hold})
+		if err != nil {
+			t.Fatal(err)
 		}
-		if math.Abs(got-want) > 1e-12 { // some ulps for each of 45 unknowns
-			t.Errorf("x = %g: got %.15g, want %.15g", x, got, want)
+		flux := 1 / (1/tc.across[0] + 1/tc.across[1])
+		for v := range m.NumVertices() {
+			x := m.Positions[3*v]
+			want := flux * x / tc.across[0]
+			if x > 1 {
+				want = flux * (1/tc.across[0] + (x-1)/tc.across[1])
+			}
+			if math.Abs(u[v]-want) > 1e-12 { // some ulps for each of 45 unknowns
+				t.Errorf("%s, x = %g: got %.15g, want %.15g", tc.name, x, u[v], want)
+			}
 		}
 	}
 }

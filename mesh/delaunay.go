@@ -13,7 +13,7 @@ const weightFloor = 1e-10
 // Delaunay flips edges until the triangulation is intrinsic Delaunay (A. Bobenko and
 // B. Springborn, Discrete Comput. Geom. 38, 2007), so that every cotangent weight is
 // at least 0. Edges that may not be flipped (boundary, more than two faces, a datum,
-// faces of different density) and whose weight is negative are split at the foot of a height. Both leave the
+// faces of different tensors) and whose weight is negative are split at the foot of a height. Both leave the
 // metric as it is. At most budget edges are split; what is left is in Unmended.
 func (s *Surface) Delaunay(budget int) {
 	l := s.newLegaliser(budget)
@@ -70,7 +70,7 @@ func (l *legaliser) run() {
 		if !s.negative(h) {
 			continue
 		}
-		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.alike(h/3, g/3) && s.Flips < l.mostFlips {
+		if g := s.Opposite(h); g >= 0 && s.mark[h] == 0 && s.alike(h, g) && s.Flips < l.mostFlips {
 			s.flip(h, g)
 			s.Flips++
 			for _, k := range [4]int32{h, prev(h), g, prev(g)} {
@@ -125,8 +125,11 @@ func (s *Surface) Weight(h int32) float64 {
 	return sum / 2
 }
 
-// alike tells whether faces e and f have the same density: a flip would mix theirs.
-func (s *Surface) alike(e, f int32) bool { return s.Density == nil || s.Density[e] == s.Density[f] }
+// alike tells whether the faces of h and g, two of one edge, have the same density and
+// agree on its length: a flip would mix them.
+func (s *Surface) alike(h, g int32) bool {
+	return s.Density == nil || s.Density[h/3] == s.Density[g/3] && s.Length[h] == s.Length[g]
+}
 
 func (s *Surface) negative(h int32) bool {
 	if s.Density != nil {
@@ -229,14 +232,15 @@ func (s *Surface) splitEdge(h int32, at float64) int32 {
 	far := make([]int32, len(around))  // and of the part m–head
 	for i, g := range around {
 		along := s.Vert[g] == tail
-		from := at
+		own := s.Length[g]
+		from := at * (own / e)
 		if !along {
-			from = e - at
+			from = own - from
 		}
 		x, y := s.apex(g)
-		spoke := fit(math.Hypot(from-x, y), from, s.Length[prev(g)], e-from, s.Length[next(g)])
+		spoke := fit(math.Hypot(from-x, y), from, s.Length[prev(g)], own-from, s.Length[next(g)])
 		g2 := s.cutFace(g, m, spoke)
-		s.Length[g], s.Length[g2] = from, e-from
+		s.Length[g], s.Length[g2] = from, own-from
 		s.mark[g2] = s.mark[g]
 		s.setCotangents(g / 3)
 		s.setCotangents(g2 / 3)

@@ -200,10 +200,17 @@ func (t *Metric) inherit(f int32) {
 	}
 }
 
+// jump is the disagreement on a length, relative, from which two tensors are not blended.
+// Fibres that turn by a few degrees from one triangle to the next stay below.
+const jump = 0.05
+
 // measure takes the lengths of the surface's edges from the mesh's metric; vertex has
 // the mesh's number of each vertex. Where the triangles of an edge do not agree, its
 // length is the root mean square of theirs: then every triangle at such an edge stands
 // for a mixture of tensors, and what is computed is first order in the mesh size there.
+// Across a jump, each triangle keeps its own length: stiffness and mass, sums over
+// triangles, are then those of linear elements, but the edge cannot be flipped. A metric
+// for distance is blended there too, as a front must go on from a length that both know.
 func (s *Surface) measure(vertex []int32) error {
 	t := s.mesh.Metric
 	own := make([]float64, len(s.Vert))
@@ -232,12 +239,22 @@ func (s *Surface) measure(vertex []int32) error {
 		if t.chart == nil && count > 0 {
 			mean = longest * math.Sqrt(sum/count)
 		}
+		off := 0.0
 		s.aroundEdge(h, func(g int32) {
 			s.Length[g] = mean
 			if own[g] > 0 {
-				s.Mismatch = max(s.Mismatch, math.Abs(own[g]-mean)/mean)
+				off = max(off, math.Abs(own[g]-mean)/mean)
 			}
 		})
+		if t.root != nil && off > jump {
+			s.aroundEdge(h, func(g int32) {
+				if own[g] > 0 {
+					s.Length[g] = own[g]
+				}
+			})
+			continue
+		}
+		s.Mismatch = max(s.Mismatch, off)
 	}
 	if t.root != nil {
 		s.Density = make([]float64, s.NumFaces())

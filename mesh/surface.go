@@ -17,7 +17,7 @@ type Surface struct {
 	NumVertices int
 	NumOriginal int
 	Vert        []int32   // tail of halfedge h; length 3·faces
-	Length      []float64 // length of halfedge h, the same all around its edge
+	Length      []float64 // length of halfedge h, the same all around its edge but where diffusion tensors jump
 	Glue        []int32   // the next halfedge around the edge: h itself on a boundary, a cycle otherwise
 	Positions   []float64 // x, y, z by vertex: to order unknowns and to show results, never to measure
 	Density     []float64 // by face, what the stiffness is multiplied by; nil: 1. See NewTensorMetric
@@ -399,10 +399,9 @@ func (s *Surface) guardLengths() {
 				if _, known := original[lo]; !known {
 					original[lo] = s.Length[g]
 				}
-				longer := s.Length[g] + missing/2
-				s.Length[g] = longer
+				s.Length[g] += missing / 2
 				for k := s.Glue[g]; k != g; k = s.Glue[k] {
-					s.Length[k] = longer
+					s.Length[k] += missing / 2
 					again = append(again, k/3)
 				}
 			}
