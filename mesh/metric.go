@@ -101,7 +101,7 @@ func NewArrivalMetric(m *Mesh, direction, along, across []float64) (*Metric, err
 // on its scale: that of D⁻¹ times √det D, the root of the determinant, is that of D. The
 // scale can be chosen so that areas are those in space, g = √det D · D⁻¹: the mass then
 // is, too, and triangles of different isotropic tensors agree on lengths in space. The
-// factor √det D is Surface.Density.
+// factor √det D is Surface.Density. It is no metric for distances: take NewArrivalMetric.
 func NewTensorMetric(m *Mesh, direction, along, across []float64) (*Metric, error) {
 	n := m.NumTriangles()
 	if len(direction) != 3*n || len(along) != n || len(across) != n {
