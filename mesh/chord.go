@@ -1,6 +1,10 @@
 package mesh
 
-import "math"
+import (
+	"math"
+
+	"heatskin/internal/parallel"
+)
 
 // roundEdge is the bend, in radians, up to which an edge counts as a chord of a curved
 // skin; sharper ones are edges of the part. A circle of nine sides is still round.
@@ -24,8 +28,8 @@ func ChordError(m *Mesh) float64 {
 	glued := glue(m.Triangles, m.NumVertices())
 	bends := bends(m, glued)
 	type sums struct{ over, area float64 }
-	blocks := make([]sums, numBlocks(m.NumTriangles()))
-	eachBlock(m.NumTriangles(), func(block, lo, hi int) {
+	blocks := make([]sums, parallel.NumBlocks(m.NumTriangles()))
+	parallel.EachBlock(m.NumTriangles(), func(block, lo, hi int) {
 		s := &blocks[block]
 		for f := int32(lo); f < int32(hi); f++ {
 			over, area := m.chordError(f, glued, bends)

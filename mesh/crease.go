@@ -3,6 +3,8 @@ package mesh
 import (
 	"math"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // Creases lists the edges whose bend angle is above degrees (flat = 0, folded back =
@@ -60,7 +62,7 @@ func Bends(m *Mesh) []float64 { return bends(m, glue(m.Triangles, m.NumVertices(
 func bends(m *Mesh, glued []int32) []float64 {
 	bend := make([]float64, len(m.Triangles))
 	noise := m.noise()
-	crowded := gather(len(bend), func(h int32) bool {
+	crowded := parallel.Gather(len(bend), func(h int32) bool {
 		o := glued[h]
 		switch {
 		case o == h:
@@ -117,8 +119,8 @@ func (m *Mesh) noise() float64 {
 		box    box3
 		double bool // some coordinate does not fit in single precision
 	}
-	blocks := make([]extent, numBlocks(m.NumVertices()))
-	eachBlock(m.NumVertices(), func(block, lo, hi int) {
+	blocks := make([]extent, parallel.NumBlocks(m.NumVertices()))
+	parallel.EachBlock(m.NumVertices(), func(block, lo, hi int) {
 		e := extent{box: noBox()}
 		for v := lo; v < hi; v++ {
 			p := point3(m.Positions, int32(v))

@@ -1,6 +1,10 @@
 package mesh
 
-import "math"
+import (
+	"math"
+
+	"heatskin/internal/parallel"
+)
 
 // alongCurve is m with its triangles in the order in which a Morton curve (G. Morton,
 // IBM technical report, 1966) passes them, and its vertices as the triangles name them
@@ -11,14 +15,14 @@ import "math"
 func (m *Mesh) alongCurve() (local *Mesh, triangle, vertex []int32) {
 	triangle = m.sortedAlongCurve()
 	corners := make([]int32, len(m.Triangles))
-	eachBlock(len(triangle), func(_, lo, hi int) {
+	parallel.EachBlock(len(triangle), func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
 			copy(corners[3*i:3*i+3], m.Triangles[3*triangle[i]:])
 		}
 	})
 	number, vertex := numberByFirst(corners, m.NumVertices())
 	positions := make([]float64, 3*len(vertex))
-	eachBlock(len(vertex), func(_, lo, hi int) {
+	parallel.EachBlock(len(vertex), func(_, lo, hi int) {
 		for v := lo; v < hi; v++ {
 			copy(positions[3*v:3*v+3], m.Positions[3*vertex[v]:])
 		}
@@ -32,14 +36,14 @@ func (m *Mesh) alongCurve() (local *Mesh, triangle, vertex []int32) {
 // many orders of magnitude.
 func (m *Mesh) sortedAlongCurve() (order []int32) {
 	items := make([]uint64, m.NumTriangles()) // place on the curve << 32 | triangle
-	eachBlock(len(items), func(_, lo, hi int) {
+	parallel.EachBlock(len(items), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			items[f] = uint64(f)
 		}
 	})
 	m.sortAlongCurve(items, make([]uint64, len(items)), m.box())
 	order = make([]int32, len(items))
-	eachBlock(len(items), func(_, lo, hi int) {
+	parallel.EachBlock(len(items), func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
 			order[i] = int32(uint32(items[i]))
 		}
@@ -59,7 +63,7 @@ func (m *Mesh) sortAlongCurve(items, scratch []uint64, box box3) {
 		return
 	}
 	scale := math.Nextafter(1<<curveBits, 0) / size
-	eachBlock(len(items), func(_, lo, hi int) {
+	parallel.EachBlock(len(items), func(_, lo, hi int) {
 		for i, item := range items[lo:hi] {
 			place := uint64(0)
 			for axis, c := range m.centre(item) {
@@ -141,7 +145,7 @@ func numberByFirst(corners []int32, numVertices int) (number, vertex []int32) {
 
 // renumber sets dst[i] to number[src[i]]. dst may be src.
 func renumber(dst, src, number []int32) {
-	eachBlock(len(src), func(_, lo, hi int) {
+	parallel.EachBlock(len(src), func(_, lo, hi int) {
 		for i, v := range src[lo:hi] {
 			dst[lo+i] = number[v]
 		}

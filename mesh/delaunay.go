@@ -3,6 +3,8 @@ package mesh
 import (
 	"math"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // weightFloor is how far below zero, against the size of its cotangents, an edge
@@ -18,7 +20,7 @@ const weightFloor = 1e-10
 func (s *Surface) Delaunay(budget int) {
 	l := s.newLegaliser(budget)
 	// One halfedge of each edge with two faces; more of stranger ones do no harm.
-	wrong := gather(len(s.Vert), func(h int32) bool { return s.Glue[h] >= h && s.negative(h) })
+	wrong := parallel.Gather(len(s.Vert), func(h int32) bool { return s.Glue[h] >= h && s.negative(h) })
 	for _, h := range slices.Backward(wrong) {
 		l.push(h)
 	}

@@ -3,6 +3,8 @@ package mesh
 import (
 	"runtime"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // glueTogether is how many halfedges are glued by one goroutine: below it, starting a
@@ -21,7 +23,7 @@ func glue(triangles []int32, numVertices int) (next []int32) {
 	if len(triangles) > glueTogether {
 		parts = runtime.GOMAXPROCS(0)
 	}
-	eachPart(parts, func(part int) {
+	parallel.EachPart(parts, func(part int) {
 		lo, hi := numVertices*part/parts, numVertices*(part+1)/parts
 		glueRange(next, triangles, int32(lo), int32(hi))
 	})

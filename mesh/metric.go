@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // A Metric gives the edges of a mesh lengths other than those in space. It is made for
@@ -214,7 +216,7 @@ const jump = 0.05
 func (s *Surface) measure(vertex []int32) error {
 	t := s.mesh.Metric
 	own := make([]float64, len(s.Vert))
-	eachBlock(s.NumFaces(), func(_, lo, hi int) {
+	parallel.EachBlock(s.NumFaces(), func(_, lo, hi int) {
 		for h := int32(3 * lo); h < int32(3*hi); h++ {
 			own[h] = t.length(s.mesh.Positions, s.parent[h/3], vertex[s.Vert[h]], vertex[s.head(h)])
 		}

@@ -3,6 +3,7 @@ package mesh
 import (
 	"slices"
 
+	"heatskin/internal/parallel"
 	"heatskin/internal/sparse"
 )
 
@@ -19,7 +20,7 @@ func (s *Surface) Laplacian() *sparse.Matrix {
 	if s.Density != nil {
 		rounding *= slices.Max(s.Density)
 	}
-	eachBlock(s.NumVertices, func(_, lo, hi int) {
+	parallel.EachBlock(s.NumVertices, func(_, lo, hi int) {
 		for i := lo; i < hi; i++ {
 			row := l.Off[l.Ptr[i]:l.Ptr[i+1]]
 			for k, w := range row {
@@ -49,7 +50,7 @@ func (s *Surface) LumpedMass() []float64 {
 // areas are those of the faces.
 func (s *Surface) areas() []float64 {
 	areas := make([]float64, s.NumFaces())
-	eachBlock(len(areas), func(_, lo, hi int) {
+	parallel.EachBlock(len(areas), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			areas[f] = s.Area(int32(f))
 		}
@@ -84,8 +85,8 @@ func (s *Surface) assemble(share func(h int32) float64) *sparse.Matrix {
 		adj []int32
 		off []float64
 	}
-	blocks := make([]block, numBlocks(n))
-	eachBlock(n, func(number, lo, hi int) {
+	blocks := make([]block, parallel.NumBlocks(n))
+	parallel.EachBlock(n, func(number, lo, hi int) {
 		b := block{make([]int32, 0, 7*(hi-lo)), make([]float64, 0, 7*(hi-lo))}
 		var keys []uint64 // other end << 32 | halfedge
 		for v := int32(lo); v < int32(hi); v++ {
@@ -118,7 +119,7 @@ func (s *Surface) assemble(share func(h int32) float64) *sparse.Matrix {
 		Diag:    make([]float64, n),
 		Off:     make([]float64, ptr[n]),
 	}
-	eachBlock(n, func(number, lo, _ int) {
+	parallel.EachBlock(n, func(number, lo, _ int) {
 		copy(a.Adj[ptr[lo]:], blocks[number].adj)
 		copy(a.Off[ptr[lo]:], blocks[number].off)
 		blocks[number] = block{}

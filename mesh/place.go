@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // snap is the weight below which a point counts as lying on the rim of its triangle:
@@ -114,7 +116,7 @@ func (s *Surface) markEdges(data []Datum) error {
 	}
 	numbers := map[string]int32{}
 	found := make([]int, len(data))
-	for _, h := range gather(len(s.Vert), func(h int32) bool { return end[s.Vert[h]] && end[s.head(h)] }) {
+	for _, h := range parallel.Gather(len(s.Vert), func(h int32) bool { return end[s.Vert[h]] && end[s.head(h)] }) {
 		a, b := s.Vert[h], s.head(h)
 		in := wanted[[2]int32{min(a, b), max(a, b)}]
 		if len(in) == 0 {

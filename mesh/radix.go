@@ -1,6 +1,10 @@
 package mesh
 
-import "runtime"
+import (
+	"runtime"
+
+	"heatskin/internal/parallel"
+)
 
 // digits is how many values a radix digit has: enough for few passes, few enough that
 // the places being written to stay in the first cache.
@@ -18,7 +22,7 @@ func distribute(dst []uint64, shift int, item func(i int) uint64) (start [digits
 	}
 	stretch := func(part int) (lo, hi int) { return len(dst) * part / parts, len(dst) * (part + 1) / parts }
 	places := make([][digits]int, parts)
-	eachPart(parts, func(part int) {
+	parallel.EachPart(parts, func(part int) {
 		count := &places[part]
 		lo, hi := stretch(part)
 		for i := lo; i < hi; i++ {
@@ -35,7 +39,7 @@ func distribute(dst []uint64, shift int, item func(i int) uint64) (start [digits
 		}
 	}
 	start[digits] = total
-	eachPart(parts, func(part int) {
+	parallel.EachPart(parts, func(part int) {
 		place := &places[part]
 		lo, hi := stretch(part)
 		for i := lo; i < hi; i++ {

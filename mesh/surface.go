@@ -4,6 +4,8 @@ import (
 	"fmt"
 	"math"
 	"slices"
+
+	"heatskin/internal/parallel"
 )
 
 // A Surface is a triangulation known by its edge lengths: connectivity and a flat
@@ -99,14 +101,14 @@ func NewSurface(m *Mesh) (*Surface, error) {
 			return nil, err
 		}
 	} else {
-		eachBlock(s.NumFaces(), func(_, lo, hi int) {
+		parallel.EachBlock(s.NumFaces(), func(_, lo, hi int) {
 			for h := int32(3 * lo); h < int32(3*hi); h++ {
 				s.Length[h] = dist(s.Positions, s.Vert[h], s.head(h))
 			}
 		})
 	}
 	s.guardLengths()
-	eachBlock(s.NumFaces(), func(_, lo, hi int) {
+	parallel.EachBlock(s.NumFaces(), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			s.setCotangents(int32(f))
 		}
@@ -162,7 +164,7 @@ func (s *Surface) Renumbered() (r *Surface, vertex []int32) {
 	c := *s
 	c.Vert, c.NoValue, c.Positions = make([]int32, len(s.Vert)), make([]bool, len(s.NoValue)), make([]float64, len(s.Positions))
 	renumber(c.Vert, s.Vert, number)
-	eachBlock(s.NumVertices, func(_, lo, hi int) {
+	parallel.EachBlock(s.NumVertices, func(_, lo, hi int) {
 		for v := lo; v < hi; v++ {
 			c.NoValue[v] = s.NoValue[vertex[v]]
 			copy(c.Positions[3*v:3*v+3], s.Positions[3*vertex[v]:])
@@ -205,8 +207,8 @@ func (m *Mesh) checkRange() error {
 
 // box is that of all vertices.
 func (m *Mesh) box() box3 {
-	blocks := make([]box3, numBlocks(m.NumVertices()))
-	eachBlock(m.NumVertices(), func(block, lo, hi int) {
+	blocks := make([]box3, parallel.NumBlocks(m.NumVertices()))
+	parallel.EachBlock(m.NumVertices(), func(block, lo, hi int) {
 		b := noBox()
 		for v := lo; v < hi; v++ {
 			b.add(point3(m.Positions, int32(v)))
@@ -226,7 +228,7 @@ func (m *Mesh) box() box3 {
 func (s *Surface) keepFaces(corners []int32) {
 	const flat, kept, crowded, collapsed, duplicate = 0, 1, 2, 3, 4
 	state := make([]uint8, len(corners)/3)
-	eachBlock(len(state), func(_, lo, hi int) {
+	parallel.EachBlock(len(state), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			if hasArea(s.Positions, corners[3*f], corners[3*f+1], corners[3*f+2]) {
 				state[f] = kept
@@ -245,7 +247,7 @@ func (s *Surface) keepFaces(corners []int32) {
 		}
 	}
 	s.Glue = glue(corners, s.NumVertices)
-	eachBlock(len(state), func(_, lo, hi int) {
+	parallel.EachBlock(len(state), func(_, lo, hi int) {
 		for f := lo; f < hi; f++ {
 			a, b, c := corners[3*f], corners[3*f+1], corners[3*f+2]
 			if a == b || b == c || c == a || s.NoValue[a] || s.NoValue[b] || s.NoValue[c] {
@@ -313,7 +315,7 @@ func (s *Surface) orient() {
 		g := s.Glue[h]
 		return g != h && s.Glue[g] == h && s.Vert[g] == s.Vert[h]
 	}
-	if len(gather(len(s.Vert), disagree)) == 0 {
+	if len(parallel.Gather(len(s.Vert), disagree)) == 0 {
 		return
 	}
 	if turned, any := s.facesToTurn(); any {
@@ -335,7 +337,7 @@ func (s *Surface) orient() {
 			}
 		}
 	}
-	for _, h := range gather(len(s.Vert), disagree) {
+	for _, h := range parallel.Gather(len(s.Vert), disagree) {
 		s.mark[h] = seam
 	}
 }
@@ -385,7 +387,7 @@ func (s *Surface) guardLengths() {
 		}
 		return lo
 	}
-	work := gather(s.NumFaces(), func(f int32) bool { return s.slack(f) < slackFloor })
+	work := parallel.Gather(s.NumFaces(), func(f int32) bool { return s.slack(f) < slackFloor })
 	for rounds := 0; len(work) > 0 && rounds < 60; rounds++ {
 		var again []int32
 		for _, f := range work {

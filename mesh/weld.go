@@ -4,6 +4,8 @@ import (
 	"math"
 	"math/bits"
 	"math/rand/v2"
+
+	"heatskin/internal/parallel"
 )
 
 // Weld is m with vertices joined that lie within tolerance of each other: 0 joins
@@ -60,7 +62,7 @@ func firstOfEach(first []int32, x []float64) {
 		return (hi^lo)>>32<<32 | uint64(i)
 	})
 	const together = 16 // heaps that one goroutine takes, so that it makes its table once
-	eachPart(digits/together, func(part int) {
+	parallel.EachPart(digits/together, func(part int) {
 		var table []uint32 // by the hash's last bits: a number in points, plus 1
 		var points [][3]float64
 		var firsts []int32
