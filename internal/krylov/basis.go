@@ -2,8 +2,8 @@ package krylov
 
 import (
 	"math"
-	"sync"
-	"sync/atomic"
+
+	"heatskin/internal/parallel"
 )
 
 // blockRows is how many rows of a basis one piece of work covers: a few vectors of
@@ -26,27 +26,7 @@ func eachPiece(workers, n, size int, do func(piece, lo, hi int)) {
 	if workers > n/4096 { // small vectors are done before a goroutine has started
 		workers = n / 4096
 	}
-	run := func(b int) { do(b, b*size, min(n, (b+1)*size)) }
-	if workers <= 1 {
-		for b := range blocks {
-			run(b)
-		}
-		return
-	}
-	var taken atomic.Int64
-	var wait sync.WaitGroup
-	for range workers {
-		wait.Go(func() {
-			for {
-				b := int(taken.Add(1)) - 1
-				if b >= blocks {
-					return
-				}
-				run(b)
-			}
-		})
-	}
-	wait.Wait()
+	parallel.On(workers, blocks, func(b int) { do(b, b*size, min(n, (b+1)*size)) })
 }
 
 // dots sets c[j] = vectors[j]ᵀ x.

@@ -26,9 +26,11 @@ func NumBlocks(n int) int { return (n + blockSize - 1) / blockSize }
 
 // EachPart calls do for the numbers below parts, on as many goroutines as there are
 // processors, low ones first. It returns when all calls have.
-func EachPart(parts int, do func(part int)) {
-	workers := min(runtime.GOMAXPROCS(0), parts)
-	if workers <= 1 {
+func EachPart(parts int, do func(part int)) { On(runtime.GOMAXPROCS(0), parts, do) }
+
+// On is EachPart on the given number of goroutines; 1 or less is the caller's own.
+func On(workers, parts int, do func(part int)) {
+	if workers = min(workers, parts); workers <= 1 {
 		for part := range parts {
 			do(part)
 		}
