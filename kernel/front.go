@@ -234,7 +234,7 @@ func (w *front) alongEdge(best *arrival, v, q, edge int32, fromQ, fromV float64)
 		anew = noOrigin
 	}
 	a := arrival{d: w.at[q].d + length, left: 1 / length, right: 1 / length, back: fromV, sides: sides{anew, anew}}
-	if a.d >= best.d {
+	if a.d >= best.d && !best.weak {
 		return
 	}
 	if !w.source(q) {
