@@ -25,8 +25,8 @@ func placed(t testing.TB, m *mesh.Mesh, data ...mesh.Datum) (*mesh.Surface, *Sol
 	return prepared(t, m, false, data)
 }
 
-// resolved is placed, with vertices added where the tessellation is coarse: the
-// default settings.
+// resolved is placed on faces cut where the tessellation is coarse, as the command
+// cuts them by default.
 func resolved(t testing.TB, m *mesh.Mesh, data ...mesh.Datum) (*mesh.Surface, *Solver) {
 	t.Helper()
 	return prepared(t, m, true, data)
