@@ -49,7 +49,7 @@
 // bend sharply from each face to the next, such as the walls of many bores with a few
 // sides each: 0.1 % in the mean there, a few per cent at single vertices. It says so:
 // the estimate that comes with each result is 3 times the true mean error in the median
-// over 132 questions, and below it in none or one. DEVELOPERS.md has the table.
+// over 132 questions, and below it in none of them. DEVELOPERS.md has the table.
 //
 // # Accuracy
 //
